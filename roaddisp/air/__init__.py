@@ -1,0 +1,1 @@
+"""The air before the roads of the study."""

@@ -1,0 +1,1 @@
+"""From NOx to NO2."""

@@ -1,0 +1,1 @@
+"""The Gaussian line integral: a reference path and a fast one."""

@@ -1,0 +1,1 @@
+"""From vehicles to line strengths of NOx and primary NO2."""

@@ -1,0 +1,1 @@
+"""Roads as lines with a width, receptors as points."""

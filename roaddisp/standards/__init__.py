@@ -1,0 +1,1 @@
+"""What each air-quality standard asks, and whether it is met."""

@@ -1,0 +1,1 @@
+"""What the user brings: read, checked, brought to SI."""

@@ -1,0 +1,1 @@
+"""From counts to vehicles on each link in each hour."""
