@@ -1,0 +1,77 @@
+"""Compiled loops that turn response tables into hours."""
+
+from __future__ import annotations
+
+import numba as nb
+import numpy as np
+
+from roaddisp.dispersion.compiling import parallel_compiled
+from roaddisp.model import Float32Array, FloatArray, IntArray
+
+UGM3_PER_GM3 = 1e6
+
+
+@parallel_compiled
+def gather_hours(table: Float32Array, weight: FloatArray, of_hour: IntArray) -> FloatArray:
+    """Sum the groups of each hour: (K, R, T) [ug/m3].
+
+    ``table`` (W, K, G, R) [g/m3 at 1 m/s], ``weight`` (T, K, G) shape over wind
+    speed [s/m], ``of_hour`` (T,) state of each hour, -1 for none (NaN results).
+    """
+    states, tracers, groups, receptors = table.shape
+    hours = of_hour.size
+    road = np.empty((tracers, receptors, hours))
+    for r in nb.prange(receptors):
+        own = np.empty((states, tracers, groups))
+        for w in range(states):
+            for k in range(tracers):
+                for g in range(groups):
+                    own[w, k, g] = table[w, k, g, r]
+        for t in range(hours):
+            w = of_hour[t]
+            for k in range(tracers):
+                if w < 0:
+                    road[k, r, t] = np.nan
+                    continue
+                total = 0.0
+                for g in range(groups):
+                    total += own[w, k, g] * weight[t, k, g]
+                road[k, r, t] = total * UGM3_PER_GM3
+    return road
+
+
+@parallel_compiled
+def gather_worst(
+    table: Float32Array,
+    weight: FloatArray,
+    first: IntArray,
+    directions: int,
+    ozone: FloatArray,
+) -> FloatArray:
+    """Run calm hours in every direction and keep the one that makes most NO2.
+
+    ``table`` (W, K, G, R), ``weight`` (Tc, K, G), ``first`` (Tc,) first state of
+    each calm hour, ``ozone`` (Tc,) [ug/m3 as NO2-equivalent, the mass of NO2
+    that the hour's ozone can make]. Returns (K, R, Tc) [ug/m3]. Background NO2
+    is the same in every direction, so the road's own NO2 decides.
+    """
+    _, tracers, groups, receptors = table.shape
+    hours = first.size
+    road = np.empty((tracers, receptors, hours))
+    for r in nb.prange(receptors):
+        for t in range(hours):
+            most = -1.0
+            for w in range(first[t], first[t] + directions):
+                nox = 0.0
+                primary = 0.0
+                for g in range(groups):
+                    nox += table[w, 0, g, r] * weight[t, 0, g]
+                    primary += table[w, 1, g, r] * weight[t, 1, g]
+                nox *= UGM3_PER_GM3
+                primary *= UGM3_PER_GM3
+                made = primary + min(nox - primary, ozone[t])
+                if not made <= most:
+                    most = made
+                    road[0, r, t] = nox
+                    road[1, r, t] = primary
+    return road

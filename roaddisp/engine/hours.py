@@ -1,0 +1,133 @@
+"""From responses to hours: road NOx, primary NO2 and, with the background, NO2."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Iterator
+from dataclasses import dataclass, replace
+from typing import Literal
+
+import numpy as np
+
+from roaddisp.chemistry.ozone_limiting import ozone_limited
+from roaddisp.constants import CALM_PLUME_WIND
+from roaddisp.dispersion.compiling import ONE_AT_A_TIME
+from roaddisp.engine.gather import gather_hours, gather_worst
+from roaddisp.model import (
+    Background,
+    FloatArray,
+    HourlyBlock,
+    IntArray,
+    LinkStrengths,
+    Responses,
+    WeatherHours,
+)
+
+RECEPTORS_AT_ONCE = 256
+"""Receptors whose hours are held at once: about 100 MB for a year."""
+
+
+@dataclass(frozen=True)
+class Conversion:
+    """How road NOx becomes NO2, and the ug/m3 of NO2 in one ppb that it goes by."""
+
+    method: Literal["ozone-limited"]
+    ugm3_per_ppb: float
+
+
+def hours(
+    responses: Iterable[Responses],
+    strengths: LinkStrengths,
+    weather: WeatherHours,
+    background: Background,
+    conversion: Conversion,
+) -> Iterator[HourlyBlock]:
+    """All hours at every receptor, a block of receptors at a time.
+
+    Parameters
+    ----------
+    responses : iterable of Responses
+        Response tables at 1 m/s.
+    strengths : LinkStrengths
+        Its shapes scale the tables hour by hour.
+    weather : WeatherHours
+        (G, T) wind at the plume.
+    background : Background
+        (T,) [ppb].
+    conversion : Conversion
+        How road NOx becomes NO2.
+
+    Yields
+    ------
+    HourlyBlock
+        Calm hours are NaN in the block itself and, unless left out, stand in
+        its ``worst`` in the direction that gives each receptor most NO2, with
+        ``CALM_PLUME_WIND`` at the plume.
+    """
+    weight = np.ascontiguousarray((strengths.shape / weather.wind_speed).transpose(2, 0, 1))
+    every = np.arange(weather.calm.size)
+    for response in _parts(responses):
+        states = response.states
+        with ONE_AT_A_TIME:
+            road = gather_hours(response.table, weight, states.of_hour)
+        worst = None
+        if states.calm_hours.size:
+            worst = _worst_direction(response, strengths, background, conversion)
+        yield _block(response.receptors, every, road, background, conversion, worst)
+
+
+def _parts(responses: Iterable[Responses]) -> Iterator[Responses]:
+    """Cut tables into parts whose hours are few enough to hold."""
+    for response in responses:
+        first, stop = response.receptors.start, response.receptors.stop
+        for start in range(first, stop, RECEPTORS_AT_ONCE):
+            end = min(start + RECEPTORS_AT_ONCE, stop)
+            yield replace(
+                response,
+                receptors=slice(start, end),
+                table=response.table[..., start - first : end - first],
+            )
+
+
+def _worst_direction(
+    response: Responses, strengths: LinkStrengths, background: Background, conversion: Conversion
+) -> HourlyBlock:
+    calm = response.states.calm_hours
+    weight = strengths.shape[:, :, calm].transpose(2, 0, 1) / CALM_PLUME_WIND
+    with ONE_AT_A_TIME:
+        road = gather_worst(
+            response.table,
+            np.ascontiguousarray(weight),
+            response.states.calm_first,
+            response.states.directions,
+            background.o3[calm] * conversion.ugm3_per_ppb,
+        )
+    return _block(response.receptors, calm, road, background, conversion, None)
+
+
+def _block(
+    receptors: slice,
+    hours: IntArray,
+    road: FloatArray,
+    background: Background,
+    conversion: Conversion,
+    worst: HourlyBlock | None,
+) -> HourlyBlock:
+    """Turn road mass (K, R, T) [ug/m3] of the named hours into a block."""
+    nox, primary = road / conversion.ugm3_per_ppb
+    no2, no, o3 = ozone_limited(
+        nox,
+        primary,
+        o3=background.o3[hours],
+        no2_background=background.no2[hours],
+        no_background=None if background.no is None else background.no[hours],
+    )
+    return HourlyBlock(
+        receptors=receptors,
+        hours=hours,
+        nox_road_ugm3=road[0],
+        no2_primary_road_ppb=primary,
+        no2_ppb=no2,
+        no_ppb=no,
+        o3_ppb=o3,
+        worst=worst,
+    )

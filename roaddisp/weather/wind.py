@@ -1,0 +1,251 @@
+"""The wind at the plume, calms and missing hours."""
+
+from __future__ import annotations
+
+from typing import Final
+
+import numpy as np
+
+from roaddisp.constants import (
+    CALM_PLUME_WIND,
+    LEAST_MEASURED_WIND,
+    SIGNIFICANT_SPEED_WITHOUT_DIRECTION,
+)
+from roaddisp.model import (
+    STABILITY_CLASSES,
+    BoolArray,
+    Clock,
+    FloatArray,
+    IntArray,
+    StationHours,
+    Terrain,
+    TimeArray,
+    WeatherHours,
+    WindHeight,
+)
+from roaddisp.weather.stability import turner_codes, turner_night
+from roaddisp.weather.sun import solar_elevation
+
+WIND_EXPONENT: Final[dict[Terrain, tuple[float, ...]]] = {
+    "open": (0.07, 0.07, 0.10, 0.15, 0.35, 0.55),
+    "urban": (0.15, 0.15, 0.20, 0.25, 0.30, 0.30),
+}
+"""Power-law exponents of classes A to F.
+
+Irwin 1979, as the defaults of EPA-454/R-99-005 sec. 6.2.5 (values from memory).
+"""
+
+
+def plume_wind(
+    wind_speed: FloatArray,
+    stability: IntArray,
+    *,
+    terrain: Terrain,
+    anemometer_height: float,
+    plume_heights: FloatArray,
+    wind_height: WindHeight,
+    wind_floor: float,
+) -> FloatArray:
+    """Wind speed that each group's plume feels.
+
+    Parameters
+    ----------
+    wind_speed : (T,) [m/s]
+        As measured.
+    stability : (T,) int codes
+    terrain : "open" or "urban"
+    anemometer_height : float [m]
+    plume_heights : (G,) [m]
+    wind_height : "release" or "station"
+        ``"station"`` takes the measured height's wind as the plume's.
+    wind_floor : float [m/s]
+
+    Returns
+    -------
+    (G, T) [m/s], NaN where speed or stability is missing
+
+    Raises
+    ------
+    ValueError
+        Where a height or the floor is not above 0.
+
+    Notes
+    -----
+    In this order: not below 1 m/s as measured (EPA-454/R-99-005 sec. 6.2.3); by
+    the power law ``u = u_a (z / z_a) ** p`` (sec. 6.2.5) to the plume; not below
+    the floor.
+
+    Examples
+    --------
+    >>> import numpy as np
+    >>> plume_wind(
+    ...     np.array([0.6, 5.0]),
+    ...     np.array([3, 3]),
+    ...     terrain="open",
+    ...     anemometer_height=10.0,
+    ...     plume_heights=np.array([2.0]),
+    ...     wind_height="release",
+    ...     wind_floor=1.0,
+    ... ).round(3)
+    array([[1.   , 3.928]])
+    """
+    before_floor = _wind_before_floor(
+        wind_speed, stability, terrain, anemometer_height, plume_heights, wind_height
+    )
+    if not wind_floor > 0:
+        raise ValueError(f"wind_floor is {wind_floor:g} m/s; allowed: above 0")
+    return np.maximum(before_floor, wind_floor)
+
+
+def _wind_before_floor(
+    wind_speed: FloatArray,
+    stability: IntArray,
+    terrain: Terrain,
+    anemometer_height: float,
+    plume_heights: FloatArray,
+    wind_height: WindHeight,
+) -> FloatArray:
+    heights = np.asarray(plume_heights, dtype=np.float64)
+    if not (anemometer_height > 0 and np.all(heights > 0)):
+        raise ValueError(
+            f"anemometer_height {anemometer_height:g} m and plume_heights {heights.tolist()} m; "
+            "allowed: above 0"
+        )
+    measured = np.maximum(wind_speed, LEAST_MEASURED_WIND)
+    known = np.where(np.asarray(stability) >= 0, measured, np.nan)
+    if wind_height == "station":
+        return np.repeat(known[None, :], heights.size, axis=0)
+    exponent = np.array(WIND_EXPONENT[terrain])[stability]
+    brought: FloatArray = known * (heights[:, None] / anemometer_height) ** exponent
+    return brought
+
+
+def calm_hours(
+    wind_speed: FloatArray, wind_from: FloatArray, *, calm_threshold: float
+) -> BoolArray:
+    """Calm hours: below the threshold, or without direction and below 1 m/s.
+
+    Parameters
+    ----------
+    wind_speed : (T,) [m/s]
+    wind_from : (T,) [deg]
+    calm_threshold : float [m/s]
+
+    Returns
+    -------
+    (T,) bool
+
+    Notes
+    -----
+    Calm is wind below the starting threshold of anemometer or vane, whichever is
+    greater (EPA-454/R-99-005 sec. 6.2.3); the rule for a missing direction is a
+    choice of this project.
+
+    Examples
+    --------
+    >>> import numpy as np
+    >>> calm_hours(np.array([0.4, 0.9, 0.9]), np.array([90, np.nan, 90]), calm_threshold=0.5)
+    array([ True,  True, False])
+    """
+    without_direction = np.isnan(wind_from) & (wind_speed < SIGNIFICANT_SPEED_WITHOUT_DIRECTION)
+    calm: BoolArray = (wind_speed < calm_threshold) | without_direction
+    return calm
+
+
+def weather_hours(
+    station: StationHours,
+    clock: Clock,
+    *,
+    terrain: Terrain,
+    anemometer_height: float,
+    wind_height: WindHeight,
+    wind_floor: float,
+    calm_threshold: float,
+    plume_heights: FloatArray,
+) -> WeatherHours:
+    """Weather of a station's hours as the engine takes it.
+
+    Parameters
+    ----------
+    station : StationHours
+    clock : Clock
+    terrain, anemometer_height, wind_height, wind_floor
+        As `plume_wind`.
+    calm_threshold : float [m/s]
+    plume_heights : (G,) [m]
+
+    Returns
+    -------
+    WeatherHours
+        In calm hours the wind is 1 m/s at every plume, the speed at which they
+        are run in the worst direction; in missing ones NaN. ``counts`` has
+        ``hours``, ``missing``, ``calm``, ``below_1_m_s`` (measured wind raised to
+        1 m/s), ``raised_to_floor`` (some plume's wind raised to the floor) and
+        ``class_A`` to ``class_F`` (hours not missing, by class).
+
+    Raises
+    ------
+    ValueError
+        Where stability is neither given nor derivable, or as `plume_wind`.
+
+    Notes
+    -----
+    A missing hour lacks the speed, the stability, or a direction at 1 m/s or
+    more. Stability, where not given, comes from the measured wind before any
+    floor and the sun at mid-hour (`turner_class`).
+    """
+    stability = _stability(station, clock.utc)
+    calm = calm_hours(station.wind_speed, station.wind_from, calm_threshold=calm_threshold)
+    missing = np.isnan(station.wind_speed) | (stability < 0) | (np.isnan(station.wind_from) & ~calm)
+    calm &= ~missing
+    blowing = ~calm & ~missing
+    before_floor = _wind_before_floor(
+        station.wind_speed, stability, terrain, anemometer_height, plume_heights, wind_height
+    )
+    wind = plume_wind(
+        station.wind_speed,
+        stability,
+        terrain=terrain,
+        anemometer_height=anemometer_height,
+        plume_heights=plume_heights,
+        wind_height=wind_height,
+        wind_floor=wind_floor,
+    )
+    wind[:, calm] = CALM_PLUME_WIND
+    wind[:, missing] = np.nan
+    raised = (before_floor < wind_floor).any(axis=0)
+    counts = {
+        "hours": len(calm),
+        "missing": int(missing.sum()),
+        "calm": int(calm.sum()),
+        "below_1_m_s": int((blowing & (station.wind_speed < LEAST_MEASURED_WIND)).sum()),
+        "raised_to_floor": int((blowing & raised).sum()),
+    } | {
+        f"class_{letter}": int((~missing & (stability == code)).sum())
+        for code, letter in enumerate(STABILITY_CLASSES)
+    }
+    return WeatherHours(
+        wind_from=np.where(blowing, np.mod(station.wind_from, 360.0), np.nan),
+        wind_speed=wind,
+        stability=np.where(missing, -1, stability),
+        mixing_height=station.mixing_height,
+        calm=calm,
+        missing=missing,
+        counts=counts,
+    )
+
+
+def _stability(station: StationHours, utc: TimeArray) -> IntArray:
+    if station.stability is not None:
+        return station.stability
+    if station.cloud is None or station.ceiling is None:
+        raise ValueError("a station gives stability, or cloud and ceiling to derive it from")
+    place = {"latitude": station.latitude, "longitude": station.longitude}
+    middle = utc + np.timedelta64(30, "m")
+    return turner_codes(
+        station.wind_speed,
+        station.cloud,
+        station.ceiling,
+        solar_elevation(middle, **place),
+        night=turner_night(middle, **place),
+    )

@@ -1,0 +1,390 @@
+"""A year's run over real open data, against numbers worked out from the raw files.
+
+Sources and what is invented beside them: ``real_files.py`` beside this file.
+Nothing that is expected here comes from roaddisp.
+"""
+
+from __future__ import annotations
+
+import importlib.util
+import math
+from collections import Counter
+from pathlib import Path
+from types import ModuleType
+
+import numpy as np
+import pytest
+
+import roaddisp as rd
+
+HERE = Path(__file__).parent
+
+
+def load(name: str) -> ModuleType:
+    spec = importlib.util.spec_from_file_location(name, HERE / f"{name}.py")
+    assert spec is not None
+    assert spec.loader is not None
+    module = importlib.util.module_from_spec(spec)
+    spec.loader.exec_module(module)
+    return module
+
+
+REAL = load("real_files")
+
+CENTROID = (33.41558, -111.83134)
+"""Latitude and longitude [deg] of the streets, by pyproj; 0.01 degree would not move a class."""
+
+UGM3_PER_PPB = 1.8804
+"""NO2 at 25 C and 101.325 kPa (40 CFR 50.3)."""
+
+
+@pytest.fixture(scope="module")
+def study_file(tmp_path_factory: pytest.TempPathFactory) -> Path:
+    return REAL.write_study(tmp_path_factory.mktemp("real"))
+
+
+@pytest.fixture(scope="module")
+def result(study_file: Path) -> rd.Result:
+    return rd.run(rd.read_study(study_file))
+
+
+@pytest.fixture(scope="module")
+def station():
+    return REAL.station_year()
+
+
+@pytest.fixture(scope="module")
+def sun(station):
+    return REAL.sun_elevation(station, *CENTROID)
+
+
+@pytest.fixture(scope="module")
+def streets():
+    """Metres and kind of every street, straight from the shapefile."""
+    frame = REAL.raw_streets()
+    kinds = [REAL.STREET_KINDS[kind] for kind in REAL.street_kinds(frame)]
+    return REAL.vertices_in_metres(frame), kinds
+
+
+# --- the raw files are those the numbers below were taken from ----------------------------
+
+
+def test_files_hold_what_their_readmes_say(streets, station):
+    """293 streets and 8 schools (geodanet README); 8,760 hours of a typical year."""
+    lines, kinds = streets
+    assert len(lines) == 293
+    assert len(REAL.raw_schools()) == 8
+    assert REAL.raw_streets().crs.axis_info[0].unit_name == "US survey foot"
+    assert sum(kind.aadt > 10_000 for kind in kinds) == 94
+    assert math.fsum(map(REAL.length_m, lines)) == pytest.approx(31_825.479, abs=0.001)
+    assert station.start[0].isoformat() == "2017-01-01T00:00:00"
+    assert station.start[-1].isoformat() == "2017-12-31T23:00:00"
+
+
+def test_traffic_profile_is_the_year_of_the_counter():
+    """8,713 counted hours of 2017; the mean over the calendar year is 1."""
+    profile = REAL.interstate_profile()
+    assert len(REAL.interstate_volumes()) == 8_713
+    assert profile.day_factor["weekday"] == pytest.approx(1.07457, abs=1e-5)
+    assert profile.day_factor["sunday"] == pytest.approx(0.75449, abs=1e-5)
+    assert REAL.traffic_shape(profile, REAL.station_year().start).sum() == pytest.approx(365.0)
+
+
+# --- geometry --------------------------------------------------------------------------
+
+
+def test_survey_feet_become_metres(result, streets):
+    """By 1200/3937 m to the foot; 0.3048 would put every vertex 0.4 m and more away."""
+    lines, _ = streets
+    network = result.scenario.network
+    assert network.link == tuple(str(number) for number in range(1, 294))
+    for parts, expected in zip(network.lines, lines, strict=True):
+        (vertices,) = parts
+        np.testing.assert_allclose(vertices, expected, rtol=0, atol=1e-3)
+
+
+def test_default_crs_is_the_utm_zone_of_the_streets(study_file, tmp_path, streets):
+    """Zone 12 north; lengths change as the scales of the two projections.
+
+    Scale of a transverse Mercator projection: Snyder 1987 (USGS Professional
+    Paper 1395) eq. 8-11, from memory: k = k0 (1 + (1 + C) A^2/2 + ...).
+    """
+    for file in study_file.parent.iterdir():
+        (tmp_path / file.name).write_bytes(file.read_bytes())
+    toml = study_file.read_text(encoding="utf-8")
+    line = f'crs = "{REAL.STATE_PLANE_METRES}"\n'
+    assert line in toml
+    (tmp_path / "study.toml").write_text(toml.replace(line, ""), encoding="utf-8")
+    study = rd.read_study(tmp_path / "study.toml")
+    assert study.crs == "EPSG:32612"
+
+    def scale(k0: float, central_meridian: float) -> float:
+        latitude = math.radians(CENTROID[0])
+        a = math.radians(CENTROID[1] - central_meridian) * math.cos(latitude)
+        c = 0.006739496775 * math.cos(latitude) ** 2
+        return k0 * (1 + (1 + c) * a * a / 2)
+
+    ratio = scale(0.9996, -111.0) / scale(0.9999, -111.9166667)
+    network = study.scenarios["base"].network
+    length = math.fsum(REAL.length_m(part) for parts in network.lines for part in parts)
+    assert length == pytest.approx(ratio * math.fsum(map(REAL.length_m, streets[0])), rel=1e-6)
+
+
+def test_schools_stand_where_the_shapefile_says(result):
+    receptors = result.scenario.receptors
+    expected = [(p.x * REAL.SURVEY_FOOT, p.y * REAL.SURVEY_FOOT) for p in REAL.raw_schools().geometry]
+    assert receptors.receptor == tuple("12345678")
+    np.testing.assert_allclose(receptors.xyz[:, :2], expected, rtol=0, atol=1e-3)
+    np.testing.assert_array_equal(receptors.z, 1.5)
+
+
+def test_school_drawn_on_a_street_is_flagged_and_not_judged(result):
+    """School 6 is 3.27 m from a street line 10.36 m (34 ft) wide; the others are 51 m off and more."""
+    table = result.summary.set_index("receptor")
+    assert list(table.index[table["on_road"]]) == ["6"]
+    for standard in ("us-naaqs-1h", "us-naaqs-annual"):
+        met = table[f"{standard}_met"]
+        assert met["6"] == ""
+        assert set(met.drop("6")) <= {"yes", "no", "undetermined"}
+
+
+# --- traffic and emissions ------------------------------------------------------------------
+
+
+def test_vehicles_and_nox_are_conserved(result, streets, station):
+    """Mass leaving the links in each hour is vehicles x length x g/km, summed by hand.
+
+    297,651 vehicle-km and 117.289 kg of NOx a day are the sums over the streets
+    of AADT x length (x g/km of the invented factors) in plain Python.
+    """
+    lines, kinds = streets
+    lengths = [REAL.length_m(line) for line in lines]
+    vehicle_km = math.fsum(k.aadt * m for k, m in zip(kinds, lengths, strict=True)) / 1e3
+    assert vehicle_km == pytest.approx(297_650.6, abs=0.1)
+    nox, no2 = (
+        math.fsum(
+            kind.aadt * metres * REAL.grams_per_metre(kind)[tracer]
+            for kind, metres in zip(kinds, lengths, strict=True)
+        )
+        for tracer in (0, 1)
+    )
+    assert nox == pytest.approx(117_288.6, abs=0.1)
+
+    shape = REAL.traffic_shape(REAL.interstate_profile(), station.start)
+    strength = result.strengths.hourly()
+    emitted = np.einsum("klt,l->kt", strength, np.array(lengths)) * 3600
+    np.testing.assert_allclose(emitted, np.outer([nox, no2], shape), rtol=1e-6)
+    assert emitted[0].sum() == pytest.approx(365 * nox, rel=1e-6)
+
+
+# --- weather -------------------------------------------------------------------------------
+
+
+def test_calm_and_missing_hours(result, station):
+    """1,050 hours of no wind, 3 below 0.5 m/s, 3 more without direction below 1 m/s; 4 lack it above.
+
+    Counted in the raw file: direction 0 ("undefined") stands in 1,058 hours, in
+    8 of them beside a wind.
+    """
+    assert Counter(station.wind_speed)[0.0] == 1_050
+    assert station.wind_from.count(0) == 1_058
+    calm, missing = REAL.calm_and_missing(station)
+    assert (sum(calm), sum(missing)) == (1_056, 4)
+    counts = result.record["counts"]["weather"]
+    assert counts["hours"] == 8_760
+    assert counts["calm"] == 1_056
+    assert counts["missing"] == 4
+    empty = np.isnan(result.hourly["no2_ppb"].to_numpy())
+    np.testing.assert_array_equal(empty, np.broadcast_to(np.array(calm) | missing, empty.shape))
+
+
+CLASS_HOURS = {"A": 157, "B": 767, "C": 1158, "D": 3190, "E": 1006, "F": 2478}
+"""Hours of each class with pvlib's sun (NREL's algorithm), missing hours left out."""
+
+
+def test_class_frequencies(result, station, sun):
+    """As counted by another hand, but for hours whose class 0.1 degree of sun would change."""
+    _, missing = REAL.calm_and_missing(station)
+    lower, middle, higher = (REAL.classes(station, sun, shift=d) for d in (-0.1, 0.0, 0.1))
+    counted = Counter(c for c, gone in zip(middle, missing, strict=True) if not gone)
+    assert counted == CLASS_HOURS
+    doubtful: Counter[str] = Counter()
+    for letters in zip(lower, middle, higher, strict=True):
+        if len(set(letters)) > 1:
+            doubtful.update(set(letters))
+    assert doubtful.total() <= 60
+    counts = result.record["counts"]["weather"]
+    for letter, hours in CLASS_HOURS.items():
+        assert abs(counts[f"class_{letter}"] - hours) <= doubtful[letter], letter
+    assert sum(counts[f"class_{letter}"] for letter in CLASS_HOURS) == 8_756
+
+
+def test_class_of_every_hour(station, sun):
+    """The table of Turner 1964, over all winds, clouds and ceilings of a real year."""
+    before, middle, after = sun
+    night = np.minimum(np.minimum(before, middle), after) <= 0
+    ours = rd.turner_class(
+        station.wind_speed, station.opaque_tenths, station.ceiling_m, middle, night=night
+    )
+    assert list(ours) == REAL.classes(station, sun)
+
+
+# --- air -----------------------------------------------------------------------------------
+
+
+def test_nitrogen_and_oxidant_are_conserved(result):
+    """NO2 + NO is the road's NOx and the background's NO2; O3 + NO2 is what came as either."""
+    hours = result.hourly
+    nox = hours["nox_road_ugm3"].to_numpy() / UGM3_PER_PPB
+    no2, no, o3 = (hours[name].to_numpy() for name in ("no2_ppb", "no_ppb", "o3_ppb"))
+    primary = hours["no2_primary_road_ppb"].to_numpy()
+    there = ~np.isnan(no2)
+    assert there.sum() == 8 * (8_760 - 1_056 - 4)
+    np.testing.assert_allclose(hours["nox_road_ppb"].to_numpy()[there], nox[there], rtol=1e-6)
+    background = REAL.BACKGROUND_NO2_PPB
+    np.testing.assert_allclose((no2 + no)[there], nox[there] + background, rtol=1e-6, atol=1e-5)
+    oxidant = REAL.BACKGROUND_O3_PPB + background + primary[there]
+    np.testing.assert_allclose((o3 + no2)[there], oxidant, rtol=1e-6, atol=1e-5)
+    for gas in (no2, no, o3):
+        assert gas[there].min() >= 0
+    assert no[there].max() > 0
+    assert o3[there].max() == pytest.approx(REAL.BACKGROUND_O3_PPB, abs=1e-6)
+
+
+def test_primary_share_lies_between_those_of_the_streets(result):
+    """A receptor's share is a mix of the streets' that reach it, never outside them."""
+    shares = [no2 / nox for nox, no2 in map(REAL.grams_per_metre, REAL.STREET_KINDS.values())]
+    nox = result.hourly["nox_road_ppb"].to_numpy()
+    reached = nox > 1e-6
+    share = result.hourly["no2_primary_road_ppb"].to_numpy()[reached] / nox[reached]
+    assert share.min() >= min(shares) - 2e-4
+    assert share.max() <= max(shares) + 2e-4
+    assert share.max() - share.min() > 0.5 * (max(shares) - min(shares))
+
+
+def test_summary_is_of_the_hours(result):
+    """Means over hours that are not calm; the 1-h value is the 8th highest daily maximum.
+
+    40 CFR 50 Appendix S (rank of the 98th percentile for 351 to 366 days is 8;
+    hours truncated to 0.1 ppb, result rounded half up: from memory).
+    """
+    no2 = result.hourly["no2_ppb"].to_numpy()
+    table = result.summary
+    np.testing.assert_allclose(table["no2_mean_ppb"], np.nanmean(no2, axis=1), rtol=1e-5)
+    days = np.where(np.isnan(no2), -np.inf, no2).reshape(8, 365, 24).max(axis=2)
+    valid = np.isfinite(days).sum(axis=1)
+    assert np.all(valid >= 351)
+    np.testing.assert_allclose(table["no2_1h_p98_ppb"], np.sort(days, axis=1)[:, -8], rtol=1e-5)
+    truncated = np.floor(np.sort(days, axis=1)[:, -8] * 10 + 1e-6) / 10
+    judged = ~table["on_road"].to_numpy()
+    np.testing.assert_array_equal(
+        table["us-naaqs-1h_value"][judged], np.floor(truncated + 0.5)[judged]
+    )
+
+
+# --- the whole way, by brute force ----------------------------------------------------------
+
+BRIGGS_OPEN = {
+    # sigma_y coefficient; sigma_z coefficient, curvature, power
+    "A": (0.22, 0.20, 0.0, 0.0),
+    "B": (0.16, 0.12, 0.0, 0.0),
+    "C": (0.11, 0.08, 2.0e-4, -0.5),
+    "D": (0.08, 0.06, 1.5e-3, -0.5),
+    "E": (0.06, 0.03, 3.0e-4, -1.0),
+    "F": (0.04, 0.016, 3.0e-4, -1.0),
+}
+"""Briggs 1973, open country, as reprinted by Gifford 1976."""
+
+WIND_EXPONENT = {"A": 0.07, "B": 0.07, "C": 0.10, "D": 0.15, "E": 0.35, "F": 0.55}
+"""Irwin 1979, rural; EPA-454/R-99-005 sec. 6.2.5 (from memory)."""
+
+
+def strip_points(line: np.ndarray, width: float, step: float = 1.0, strips: int = 8) -> np.ndarray:
+    """(N, 3): points over the travelled way, and the metres of road each stands for."""
+    points = []
+    for start, end in zip(line[:-1], line[1:], strict=True):
+        along = end - start
+        length = float(np.hypot(*along))
+        count = max(math.ceil(length / step), 1)
+        places = start + np.outer((np.arange(count) + 0.5) / count, along)
+        across = np.array([-along[1], along[0]]) / length
+        for offset in ((np.arange(strips) + 0.5) / strips - 0.5) * width:
+            share = np.full((count, 1), length / count / strips)
+            points.append(np.hstack([places + offset * across, share]))
+    return np.vstack(points)
+
+
+def nox_by_points(
+    places: list[np.ndarray],
+    sources: list[tuple[float, float, float]],
+    receptor: np.ndarray,
+    wind_from: float,
+    wind_speed: float,
+    letter: str,
+) -> float:
+    """NOx [ug/m3] 1.5 m above ground from a million small sources (Turner 1970 eq. 3.1)."""
+    a_y, a_z, curve, power = BRIGGS_OPEN[letter]
+    bearing = math.radians(wind_from)
+    upwind = np.array([math.sin(bearing), math.cos(bearing)])
+    total = 0.0
+    for points, (strength, height, sigma_z0) in zip(places, sources, strict=True):
+        away = points[:, :2] - receptor
+        down = away @ upwind
+        cross = away @ np.array([-upwind[1], upwind[0]])
+        d, c, metres = (values[down > 0] for values in (down, cross, points[:, 2]))
+        sy2 = (a_y * d) ** 2 / (1 + 1e-4 * d)
+        sz2 = sigma_z0**2 + (a_z * d * (1 + curve * d) ** power) ** 2
+        plume = max(height, 2.0)
+        wind = max(max(wind_speed, 1.0) * (round(plume, 1) / 10) ** WIND_EXPONENT[letter], 1.0)
+        vertical = np.exp(-((1.5 - height) ** 2) / (2 * sz2)) + np.exp(
+            -((1.5 + height) ** 2) / (2 * sz2)
+        )
+        dose = metres * np.exp(-(c**2) / (2 * sy2)) * vertical / np.sqrt(sy2 * sz2)
+        total += strength * float(dose.sum()) / (2 * math.pi * wind)
+    return total * 1e6
+
+
+def test_nox_of_single_hours_by_brute_force(result, streets, station, sun):
+    """One hour of each class at the seven schools off the street, within 1 %.
+
+    Each street is spread over its width and length as small point plumes.
+    Release height and first spread: light 1.3 m and 1.2 m, heavy 3.4 m and 3.2 m,
+    mixed by NOx (US EPA hot-spot guidance, Appendix J, from memory).
+    """
+    lines, kinds = streets
+    places = [
+        strip_points(line, kind.width_ft * 0.3048) for line, kind in zip(lines, kinds, strict=True)
+    ]
+    letters = REAL.classes(station, sun)
+    calm, missing = REAL.calm_and_missing(station)
+    shape = REAL.traffic_shape(REAL.interstate_profile(), station.start)
+    modelled = result.hourly["nox_road_ugm3"].to_numpy()
+    schools = result.scenario.receptors.xyz[:, :2]
+    compared = 0
+    for letter in BRIGGS_OPEN:
+        hours = [t for t in range(8_760) if letters[t] == letter and not (calm[t] or missing[t])]
+        hour = hours[len(hours) // 3]
+        sources = []
+        for kind in kinds:
+            heavy = kind.heavy_percent / 100
+            car, truck = (
+                REAL.FACTORS[name][kind.speed_mph][0] for name in ("car", "articulated_truck")
+            )
+            truck_share = heavy * truck / (heavy * truck + (1 - heavy) * car)
+            strength = REAL.grams_per_metre(kind)[0] * kind.aadt * shape[hour] / 3600
+            sources.append(
+                (strength, 1.3 + truck_share * (3.4 - 1.3), 1.2 + truck_share * (3.2 - 1.2))
+            )
+        for school in (0, 1, 2, 3, 4, 6, 7):
+            expected = nox_by_points(
+                places,
+                sources,
+                schools[school],
+                station.wind_from[hour],
+                station.wind_speed[hour],
+                letter,
+            )
+            if expected > 0.01 * np.nanmax(modelled[school]):
+                assert modelled[school, hour] == pytest.approx(expected, rel=0.01), (letter, school)
+                compared += 1
+    assert compared >= 30
