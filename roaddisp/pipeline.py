@@ -123,7 +123,8 @@ def run(study: Study, *, scenario: str | None = None, progress: Progress | None 
             "versions": _versions(),
             "inputs": [vars(file) for file in chosen.files],
             "settings": chosen.settings,
-            "counts": _counts(chosen, strengths, weather, states, segments, present),
+            "counts": _counts(chosen, strengths, weather, states, segments, present)
+            | {"hours_that_make_a_statistic": _raised_hours(chosen, statistics)},
             "warnings": [vars(caution) for caution in study.cautions],
             "timings_s": {name: round(seconds, 3) for name, seconds in timer.seconds.items()},
         },
@@ -230,6 +231,7 @@ def _statistics(scenario: Scenario, weather: WeatherHours, block: HourlyBlock) -
         clock=scenario.clock,
         background=scenario.background,
         calm=weather.calm,
+        raised=weather.raised,
         ugm3_per_ppb=scenario.options.ugm3_per_ppb,
     )
 
@@ -332,6 +334,29 @@ def _counts(
         "weather": dict(weather.counts),
         "weather_states": len(states),
     }
+
+
+def _raised_hours(scenario: Scenario, statistics: Statistics) -> dict[str, Any]:
+    """Of the hours that make a statistic, how many had their wind raised by a floor.
+
+    At the receptor off the road where the statistic is highest, in each year.
+    """
+    told: dict[str, Any] = {}
+    off_road = ~scenario.receptors.on_road
+    for values, raised, name in (
+        (statistics.no2_1h_p98_ppb, statistics.raised_in_p98, "no2_1h_p98_ppb"),
+        (statistics.no2_1h_19th_ppb, statistics.raised_in_19th, "no2_1h_19th_ugm3"),
+    ):
+        for year, own, count in zip(statistics.years, values, raised, strict=True):
+            candidates = np.where(off_road, own, np.nan)
+            if np.isnan(candidates).all():
+                continue
+            highest = int(np.nanargmax(candidates))
+            told.setdefault(name, {})[str(year)] = {
+                "receptor": scenario.receptors.receptor[highest],
+                "wind_raised_by_a_floor": int(count[highest]),
+            }
+    return told
 
 
 def _versions() -> dict[str, str]:

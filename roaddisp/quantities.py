@@ -145,7 +145,9 @@ def parse_number(text: str) -> float:
     value = float(stripped)
     if not np.isfinite(value):
         raise QuantityError(
-            "a number too large to hold", allowed="a finite decimal number", mend="write fewer digits"
+            "a number too large to hold",
+            allowed="a finite decimal number",
+            mend="write fewer digits",
         )
     return value
 
@@ -201,6 +203,8 @@ def parse_quantity(
         )
     value = parse_number(found.group())
     unit = stripped[found.end() :].strip()
+    if unit.startswith((",", "_", ".")):
+        parse_number(stripped.split(" ")[0])
     if not unit and quantity not in UNITLESS:
         raise QuantityError(
             f"a number without a unit, where a {quantity} is needed",
@@ -235,7 +239,9 @@ def check_unit(quantity: str, unit: str) -> Unit:
     if close:
         mend = f"write {close[0]!r} (spelling and case matter)"
     elif where:
-        mend = f"{unit!r} is a unit of {where[0]}, not of {quantity}: look whether the column is right"
+        mend = (
+            f"{unit!r} is a unit of {where[0]}, not of {quantity}: look whether the column is right"
+        )
     else:
         mend = f"convert the values, or write one of: {spellings(quantity)}"
     raise QuantityError(

@@ -44,7 +44,7 @@ def segment_ends(segments: npt.ArrayLike, name: str = "segments") -> FloatArray:
 
 
 def per_segment(name: str, value: npt.ArrayLike, count: int, *, positive: bool) -> FloatArray:
-    """A scalar or (S,) array as (S,): finite, and positive or not negative."""
+    """Spread a scalar or (S,) array as (S,): finite, and positive or not negative."""
     values = _finite(name, value)
     if values.shape not in {(), (count,)}:
         raise ValueError(f"{name}: shape {values.shape}; allowed: a scalar or ({count},)")
@@ -56,7 +56,7 @@ def per_segment(name: str, value: npt.ArrayLike, count: int, *, positive: bool) 
 
 
 def positive_scalar(name: str, value: float, unit: str) -> float:
-    """A single finite number above 0."""
+    """Take a single finite number above 0."""
     number = _finite(name, value)
     if number.shape != () or number <= 0.0:
         raise ValueError(f"{name}: {value!r}; allowed: one number above 0 {unit}")
@@ -96,7 +96,7 @@ def strengths(strength: npt.ArrayLike, count: int) -> FloatArray:
 
 
 def groups(group: npt.ArrayLike, count: int) -> IntArray:
-    """Groups as (S,) whole numbers from 0."""
+    """Take groups as (S,) whole numbers from 0."""
     values = _finite("group", group)
     if values.shape != (count,):
         raise ValueError(f"group: shape {values.shape}; allowed: ({count},)")
@@ -117,7 +117,7 @@ def class_codes(name: str, stability: str | Sequence[str] | npt.NDArray[np.str_]
 
 
 def one_of(name: str, value: Name, allowed: Sequence[str]) -> Name:
-    """A name out of a short list."""
+    """Take a name out of a short list."""
     if value not in allowed:
         choices = ", ".join(repr(choice) for choice in allowed)
         raise ValueError(f"{name}: {value!r}; allowed: {choices}")

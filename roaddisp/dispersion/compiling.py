@@ -1,7 +1,13 @@
-"""How numeric code is compiled: where the machine code is kept, and one call at a time."""
+"""How numeric code is compiled: where the machine code is kept, and one call at a time.
+
+numba keeps compiled functions on disk, and notices a change in a function's own
+file but not in what it calls from another. The folder they are kept in therefore
+bears the fingerprint of all sources of this package.
+"""
 
 from __future__ import annotations
 
+import hashlib
 import os
 import tempfile
 import threading
@@ -23,23 +29,29 @@ FAST: Final = {"contract", "nsz", "arcp"}
 
 def compiled(function: Callable[P, T]) -> Callable[P, T]:
     """Compile on first use, in full precision."""
-    made: Callable[P, T] = numba.njit(cache=_CACHE, error_model="numpy", nogil=True)(function)
-    return made
+    return _jit(function)
 
 
 def fast_compiled(function: Callable[P, T]) -> Callable[P, T]:
     """Compile on first use, with the rounding freedoms of `FAST`."""
-    made: Callable[P, T] = numba.njit(
-        cache=_CACHE, error_model="numpy", nogil=True, fastmath=FAST
-    )(function)
-    return made
+    return _jit(function, fastmath=FAST)
 
 
 def parallel_compiled(function: Callable[P, T]) -> Callable[P, T]:
     """As `fast_compiled`, for a function that shares its work among threads."""
-    made: Callable[P, T] = numba.njit(
-        cache=_CACHE, error_model="numpy", nogil=True, fastmath=FAST, parallel=True
-    )(function)
+    return _jit(function, fastmath=FAST, parallel=True)
+
+
+def _jit(function: Callable[P, T], **options: Any) -> Callable[P, T]:
+    settings: Any = numba.config
+    standing = settings.CACHE_DIR
+    settings.CACHE_DIR = str(_FOLDER) if _FOLDER else standing
+    try:
+        made: Callable[P, T] = numba.njit(
+            cache=_FOLDER is not None, error_model="numpy", nogil=True, **options
+        )(function)
+    finally:
+        settings.CACHE_DIR = standing
     return made
 
 
@@ -47,13 +59,10 @@ def is_kept(function: Callable[..., Any]) -> bool:
     """Whether machine code of a compiled function is at hand, in memory or on disk."""
     if function.signatures:  # type: ignore[attr-defined]
         return True
-    folder = function.stats.cache_path  # type: ignore[attr-defined]
-    if folder is None:
+    if _FOLDER is None:
         return False
-    source = Path(function.__code__.co_filename)
-    pattern = f"{source.stem}.{function.__name__}-*.nbi"
-    changed = source.stat().st_mtime
-    return any(index.stat().st_mtime >= changed for index in Path(folder).glob(pattern))
+    module = function.__module__.rpartition(".")[2]
+    return any(_FOLDER.rglob(f"{module}.{function.__name__}-*.nbi"))
 
 
 def _writable(folder: Path) -> bool:
@@ -65,19 +74,31 @@ def _writable(folder: Path) -> bool:
         return False
 
 
-def _choose_cache() -> bool:
-    """Keep machine code beside the package, else in the user's cache folder, else nowhere."""
-    if os.environ.get("NUMBA_CACHE_DIR") or _writable(Path(__file__).parent / "__pycache__"):
-        return True
-    root = os.environ.get("XDG_CACHE_HOME") or os.environ.get("LOCALAPPDATA")
-    try:
-        folder = (Path(root) if root else Path.home() / ".cache") / "roaddisp"
-    except RuntimeError:
-        return False
-    if not _writable(folder):
-        return False
-    numba.config.CACHE_DIR = str(folder)
-    return True
+def _fingerprint() -> str:
+    digest = hashlib.sha256(numba.__version__.encode())
+    for source in sorted(Path(__file__).parent.glob("*.py")):
+        digest.update(source.read_bytes())
+    return digest.hexdigest()[:16]
 
 
-_CACHE: Final = _choose_cache()
+def _folder() -> Path | None:
+    """Choose where machine code is kept; None where nothing can be written.
+
+    As the user says, else beside the package, else in the user's cache folder.
+    """
+    candidates = [Path(__file__).parent / "__pycache__"]
+    if wished := os.environ.get("NUMBA_CACHE_DIR"):
+        candidates.insert(0, Path(wished))
+    users = os.environ.get("XDG_CACHE_HOME") or os.environ.get("LOCALAPPDATA")
+    if users:
+        candidates.append(Path(users) / "roaddisp")
+    elif home := os.environ.get("HOME"):
+        candidates.append(Path(home) / ".cache" / "roaddisp")
+    for candidate in candidates:
+        folder = candidate / f"compiled-{_fingerprint()}"
+        if _writable(folder):
+            return folder
+    return None
+
+
+_FOLDER: Final = _folder()

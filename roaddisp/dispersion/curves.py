@@ -139,7 +139,7 @@ def sigma_z(
 
 
 def coefficients(terrain: Terrain) -> FloatArray:
-    """``(a, b, p)`` of both curves for every class: (6, 2, 3), crosswind first."""
+    """Give ``(a, b, p)`` of both curves for every class: (6, 2, 3), crosswind first."""
     name = one_of("terrain", terrain, ("open", "urban"))
     return np.array(list(zip(SIGMA_Y[name], SIGMA_Z[name], strict=True)), dtype=np.float64)
 

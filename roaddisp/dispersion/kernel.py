@@ -11,12 +11,13 @@ import numpy as np
 import numpy.typing as npt
 
 from roaddisp.dispersion import arguments, stages
+from roaddisp.dispersion.columns import BLOCK
 from roaddisp.dispersion.compiling import ONE_AT_A_TIME, is_kept
 from roaddisp.dispersion.curves import coefficients
 from roaddisp.model import Float32Array, FloatArray, IntArray, Terrain
 
 LEAST_BLOCK: Final = 32
-BLOCKS_WANTED: Final = 5
+BLOCKS_WANTED: Final = 16
 """Few receptors are cut into this many blocks, so that threads have work to share."""
 
 
@@ -141,6 +142,7 @@ def windowed_table(
     piece: FloatArray,
     near: FloatArray,
     far: FloatArray,
+    across_only: bool = False,
 ) -> Float32Array:
     """`response_table` for the engine: each segment serves the receptors in its window.
 
@@ -157,6 +159,10 @@ def windowed_table(
     near, far : (S,) [m]
         A pair counts where the receptor's plan distance from ``piece`` is in
         ``[near, far)``.
+    across_only : bool
+        ``sigma_y0`` is a spread across the segment alone, so that the plume gets
+        its component across the wind, ``sigma_y0 |sin(angle of wind and segment)|``.
+        For roads of real width: otherwise a road's ends are blurred along it.
 
     Returns
     -------
@@ -183,31 +189,31 @@ def windowed_table(
     """
     _within("stability_codes", stability_codes, 6)
     _within("group", group, n_groups)
-    points = np.array(receptors, dtype=np.float64, order="C")
+    points = _copy(receptors)
     table = np.zeros((len(wind_from), len(strength), n_groups, len(points)), dtype=np.float32)
     if table.size == 0 or len(ends) == 0:
         return table
-    size = min(stages.BLOCK, max(LEAST_BLOCK, -(-len(points) // BLOCKS_WANTED)))
-    floats = [
-        np.array(array, dtype=np.float64, order="C")
-        for array in (ends, piece, near, far, np.radians(wind_from), mixing_height)
-    ]
-    sources = [
-        np.array(array, dtype=np.float64, order="C") for array in (height, sigma_z0, sigma_y0)
-    ]
+    size = min(BLOCK, max(LEAST_BLOCK, -(-len(points) // BLOCKS_WANTED)))
     with ONE_AT_A_TIME, numba.parallel_chunksize(1):
         stages.fill_table(
             table,
             points,
             _along_curve(points[:, :2]),
             size,
-            *floats[:5],
+            _copy(ends),
+            _copy(piece),
+            _copy(near),
+            _copy(far),
+            np.radians(_copy(wind_from)),
             np.array(stability_codes, dtype=np.int64),
-            floats[5],
+            _copy(mixing_height),
             _rational(coefficients(terrain)),
             np.array(strength, dtype=np.float32, order="C"),
             np.array(group, dtype=np.int64),
-            *sources,
+            _copy(height),
+            _copy(sigma_z0),
+            _copy(sigma_y0),
+            across_only,
         )
     return table
 
@@ -215,6 +221,11 @@ def windowed_table(
 def needs_compiling() -> bool:
     """Whether the next table waits for the compiler (some 15 s, once per installation)."""
     return not is_kept(stages.fill_table)
+
+
+def _copy(values: FloatArray) -> FloatArray:
+    """Return a fresh array, so that compiled code always meets the same layout."""
+    return np.array(values, dtype=np.float64, order="C")
 
 
 def _within(name: str, values: IntArray, limit: int) -> None:
@@ -225,9 +236,9 @@ def _within(name: str, values: IntArray, limit: int) -> None:
 
 
 def _rational(curves: FloatArray) -> Float32Array:
-    """Coefficients of `stages.Curve` for each class: both curves as fractions in d.
+    """Coefficients of `columns.Curve` for each class: both curves as fractions in d.
 
-    With p in {-1, -1/2, 0, 1/2}, (1 + b d)^2p is 1/((1 + e1 d + e2 d^2)) or 1 + g d.
+    With p in {-1, -1/2, 0, 1/2}, (1 + b d)^2p is 1/(1 + e1 d + e2 d^2) or 1 + g d.
     """
     table = np.zeros((len(curves), 6), dtype=np.float32)
     for row, ((a, b, _), (az, bz, pz)) in enumerate(curves):

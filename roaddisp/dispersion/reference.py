@@ -293,9 +293,7 @@ def _integral(line: Line, plume: Plume, length: float, edges: FloatArray) -> flo
     tolerance = RELATIVE * coarse.sum() + ABSOLUTE * scale
     total = 0.0
     for panel in range(count - 1):
-        total += _refine(
-            edges[panel], edges[panel + 1], coarse[panel], tolerance, line, plume
-        )
+        total += _refine(edges[panel], edges[panel + 1], coarse[panel], tolerance, line, plume)
     return total
 
 

@@ -119,6 +119,34 @@ def link_strengths(
     EPA guidance for quantitative PM hot-spot analyses, Appendix J, from memory).
     The plume feels the wind at its release height, not below 2 m, rounded to
     0.1 m so that links share it.
+
+    Examples
+    --------
+    >>> import numpy as np
+    >>> from roaddisp.emissions.factors import built_in_factors
+    >>> from roaddisp.traffic.fleet import fleet_without_mix
+    >>> road = Network(
+    ...     link=("A1",),
+    ...     name=("",),
+    ...     lines=((np.array([[0.0, 0.0], [100.0, 0.0]]),),),
+    ...     width=np.array([7.2]),
+    ...     aadt=np.array([24_000.0]),
+    ...     speed=np.array([50 / 3.6]),
+    ...     heavy_share=np.array([0.1]),
+    ...     profile=np.array([0]),
+    ...     fleet=np.array([0]),
+    ... )
+    >>> hour = np.array(["2024-05-14T08:00"], dtype="datetime64[m]")
+    >>> made = link_strengths(
+    ...     road,
+    ...     profiles=Profiles(("flat",), np.full((1, 12, 3, 24), 1 / 24), np.ones((1, 12, 3))),
+    ...     counts=None,
+    ...     fleet=fleet_without_mix(),
+    ...     factors=built_in_factors(),
+    ...     clock=Clock(hour, hour, utc_offset=0.0, timezone="UTC"),
+    ... )
+    >>> (made.hourly()[:, 0, 0] * 1e6).round(2)  # ug/m/s of NOx and of primary NO2
+    array([136.93,  28.97])
     """
     by_counts = _on_counts(network, profiles, counts)
     on_profiles, on_counts = np.flatnonzero(~by_counts), np.flatnonzero(by_counts)

@@ -15,18 +15,13 @@ UGM3_PER_GM3 = 1e6
 def gather_hours(table: Float32Array, weight: FloatArray, of_hour: IntArray) -> FloatArray:
     """Sum the groups of each hour: (K, R, T) [ug/m3].
 
-    ``table`` (W, K, G, R) [g/m3 at 1 m/s], ``weight`` (T, K, G) shape over wind
+    ``table`` (R, W, K, G) [g/m3 at 1 m/s], ``weight`` (T, K, G) shape over wind
     speed [s/m], ``of_hour`` (T,) state of each hour, -1 for none (NaN results).
     """
-    states, tracers, groups, receptors = table.shape
+    receptors, _, tracers, groups = table.shape
     hours = of_hour.size
     road = np.empty((tracers, receptors, hours))
     for r in nb.prange(receptors):
-        own = np.empty((states, tracers, groups))
-        for w in range(states):
-            for k in range(tracers):
-                for g in range(groups):
-                    own[w, k, g] = table[w, k, g, r]
         for t in range(hours):
             w = of_hour[t]
             for k in range(tracers):
@@ -35,7 +30,7 @@ def gather_hours(table: Float32Array, weight: FloatArray, of_hour: IntArray) -> 
                     continue
                 total = 0.0
                 for g in range(groups):
-                    total += own[w, k, g] * weight[t, k, g]
+                    total += table[r, w, k, g] * weight[t, k, g]
                 road[k, r, t] = total * UGM3_PER_GM3
     return road
 
@@ -50,12 +45,12 @@ def gather_worst(
 ) -> FloatArray:
     """Run calm hours in every direction and keep the one that makes most NO2.
 
-    ``table`` (W, K, G, R), ``weight`` (Tc, K, G), ``first`` (Tc,) first state of
+    ``table`` (R, W, K, G), ``weight`` (Tc, K, G), ``first`` (Tc,) first state of
     each calm hour, ``ozone`` (Tc,) [ug/m3 as NO2-equivalent, the mass of NO2
     that the hour's ozone can make]. Returns (K, R, Tc) [ug/m3]. Background NO2
     is the same in every direction, so the road's own NO2 decides.
     """
-    _, tracers, groups, receptors = table.shape
+    receptors, _, tracers, groups = table.shape
     hours = first.size
     road = np.empty((tracers, receptors, hours))
     for r in nb.prange(receptors):
@@ -65,8 +60,8 @@ def gather_worst(
                 nox = 0.0
                 primary = 0.0
                 for g in range(groups):
-                    nox += table[w, 0, g, r] * weight[t, 0, g]
-                    primary += table[w, 1, g, r] * weight[t, 1, g]
+                    nox += table[r, w, 0, g] * weight[t, 0, g]
+                    primary += table[r, w, 1, g] * weight[t, 1, g]
                 nox *= UGM3_PER_GM3
                 primary *= UGM3_PER_GM3
                 made = primary + min(nox - primary, ozone[t])

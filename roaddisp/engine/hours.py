@@ -14,6 +14,7 @@ from roaddisp.dispersion.compiling import ONE_AT_A_TIME
 from roaddisp.engine.gather import gather_hours, gather_worst
 from roaddisp.model import (
     Background,
+    Float32Array,
     FloatArray,
     HourlyBlock,
     IntArray,
@@ -67,11 +68,12 @@ def hours(
     every = np.arange(weather.calm.size)
     for response in _parts(responses):
         states = response.states
+        table = np.ascontiguousarray(response.table.transpose(3, 0, 1, 2))
         with ONE_AT_A_TIME:
-            road = gather_hours(response.table, weight, states.of_hour)
+            road = gather_hours(table, weight, states.of_hour)
         worst = None
         if states.calm_hours.size:
-            worst = _worst_direction(response, strengths, background, conversion)
+            worst = _worst_direction(response, table, strengths, background, conversion)
         yield _block(response.receptors, every, road, background, conversion, worst)
 
 
@@ -89,13 +91,17 @@ def _parts(responses: Iterable[Responses]) -> Iterator[Responses]:
 
 
 def _worst_direction(
-    response: Responses, strengths: LinkStrengths, background: Background, conversion: Conversion
+    response: Responses,
+    table: Float32Array,
+    strengths: LinkStrengths,
+    background: Background,
+    conversion: Conversion,
 ) -> HourlyBlock:
     calm = response.states.calm_hours
     weight = strengths.shape[:, :, calm].transpose(2, 0, 1) / CALM_PLUME_WIND
     with ONE_AT_A_TIME:
         road = gather_worst(
-            response.table,
+            table,
             np.ascontiguousarray(weight),
             response.states.calm_first,
             response.states.directions,

@@ -72,12 +72,13 @@ def draw_map(result: Result) -> Figure:
         spine.set_color(palette.INK)
         spine.set_linewidth(0.8)
 
+    beyond, scale = draw_concentration(axes, figure, result, frame)
     handles: list[Any] = []
-    shown = draw_concentration(axes, figure, result, frame)
     handles += draw_limits(axes, result)
     handles += draw_sites(axes, result)
     handles += draw_roads(axes, result, frame)
-    handles += draw_points(axes, result, frame, coloured=shown)
+    handles += draw_points(axes, result, frame, coloured=scale)
+    handles += beyond
     draw_scale_bar(axes, frame)
     draw_north_arrow(axes, frame)
     _write_words(figure, result)
@@ -118,7 +119,7 @@ def _write_words(figure: Figure, result: Result) -> None:
         color=palette.INK, va="top", parse_math=False,
     )  # fmt: skip
     figure.text(
-        0.025, 0.072, textwrap.fill(" ".join(cautions(result)), 162), fontsize=8.8,
+        0.025, 0.072, textwrap.fill(" ".join(cautions(result)), 176), fontsize=8.8,
         color=palette.INK, va="top", linespacing=1.35,
     )  # fmt: skip
     _write_verdicts(figure, result)

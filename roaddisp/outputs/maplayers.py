@@ -8,7 +8,7 @@ from typing import TYPE_CHECKING, Any, Final, NamedTuple
 
 import numpy as np
 
-from roaddisp.model import BoolArray, FloatArray, Result, Verdicts
+from roaddisp.model import BoolArray, Float32Array, FloatArray, Grid, Result, Verdicts
 from roaddisp.outputs import palette
 from roaddisp.outputs.mapframe import Frame, place_names
 from roaddisp.outputs.raster import on_grid
@@ -21,6 +21,8 @@ STATISTIC: Final = "no2_mean_ugm3"
 """What the map shades."""
 
 _MOST_NAMES: Final = 24
+
+_BEYOND: Final = "#d3cfc4"
 
 
 class Mark(NamedTuple):
@@ -48,32 +50,60 @@ def _colour_scale(values: FloatArray) -> tuple[Any, Any, FloatArray]:
     return colours, BoundaryNorm(limits, 256, extend="both"), limits
 
 
-def draw_concentration(axes: Axes, figure: Figure, result: Result, frame: Frame) -> Any:
-    """Shade the grid, or prepare the colours of the points; returns what colours points."""
-    from matplotlib.cm import ScalarMappable
+def draw_concentration(
+    axes: Axes, figure: Figure, result: Result, frame: Frame
+) -> tuple[list[Any], tuple[Any, Any] | None]:
+    """Shade the grid and draw the key of its colours.
 
+    Returns the legend's entries and, where there is no grid, the colours and their
+    classes for the points.
+    """
     receptors = result.scenario.receptors
     values = result.summary[STATISTIC].to_numpy(dtype=float)
     inside = frame.holds(receptors.x, receptors.y) & ~receptors.on_road
     colours, norm, limits = _colour_scale(values[inside])
-    scale = ScalarMappable(norm, colours)
-    grid = receptors.grid
-    if grid is not None:
-        half = grid.spacing / 2
-        east = grid.west + grid.spacing * (grid.columns - 1)
-        south = grid.north - grid.spacing * (grid.rows - 1)
-        axes.imshow(
-            on_grid(receptors, values),
-            cmap=colours,
-            norm=norm,
-            extent=(grid.west - half, east + half, south - half, grid.north + half),
-            interpolation="nearest",
-            zorder=1,
-        )
-        axes.set_xlim(frame.west, frame.east)
-        axes.set_ylim(frame.south, frame.north)
+    _draw_key(figure, result, colours, norm, limits, receptors.z[inside])
+    if receptors.grid is None:
+        return [], (colours, norm)
+    return _shade(axes, receptors.grid, on_grid(receptors, values), (colours, norm), frame), None
+
+
+def _shade(
+    axes: Axes, grid: Grid, cells: Float32Array, scale: tuple[Any, Any], frame: Frame
+) -> list[Any]:
+    from matplotlib.patches import Patch
+
+    half = grid.spacing / 2
+    east = grid.west + grid.spacing * (grid.columns - 1)
+    south = grid.north - grid.spacing * (grid.rows - 1)
+    axes.imshow(
+        cells,
+        cmap=scale[0],
+        norm=scale[1],
+        extent=(grid.west - half, east + half, south - half, grid.north + half),
+        interpolation="nearest",
+        zorder=1,
+    )
+    axes.set_xlim(frame.west, frame.east)
+    axes.set_ylim(frame.south, frame.north)
+    x = grid.west + grid.spacing * np.arange(grid.columns)
+    y = grid.north - grid.spacing * np.arange(grid.rows)
+    empty = np.isnan(cells) & frame.holds(*np.meshgrid(x, y))
+    corners = np.array([frame.west, frame.east]), np.array([frame.south, frame.north])
+    covered = Frame(grid.west - half, south - half, east + half, grid.north + half)
+    if not empty.any() and covered.holds(*corners).all():
+        return []
+    axes.patch.set(hatch="///", edgecolor=_BEYOND, linewidth=0.0)
+    return [Patch(facecolor="#ffffff", edgecolor=_BEYOND, hatch="///", label="beyond the grid")]
+
+
+def _draw_key(
+    figure: Figure, result: Result, colours: Any, norm: Any, limits: FloatArray, heights: FloatArray
+) -> None:
+    from matplotlib.cm import ScalarMappable
+
     bar = figure.colorbar(
-        scale,
+        ScalarMappable(norm, colours),
         cax=figure.add_axes((0.742, 0.778, 0.225, 0.022)),
         orientation="horizontal",
         extend="both",
@@ -85,17 +115,12 @@ def draw_concentration(axes: Axes, figure: Figure, result: Result, frame: Frame)
     years = result.statistics.years
     period = f"{years[0]}" if len(years) == 1 else f"worst year of {years[0]} to {years[-1]}"
     reference = result.scenario.options.reference.replace(" C", " \u00b0C")
-    height = sorted(set(receptors.z[inside].tolist())) or [0.0]
-    above = f"{height[0]:g}" if len(height) == 1 else f"{height[0]:g} to {height[-1]:g}"
+    low, high = (heights.min(), heights.max()) if heights.size else (0.0, 0.0)
+    above = f"{low:g}" if low == high else f"{low:g} to {high:g}"
     figure.text(
-        0.742,
-        0.878,
-        f"NO\u2082, mean of {period} [\u00b5g/m\u00b3]",
-        fontsize=11.5,
-        weight="bold",
-        color=palette.INK,
-        va="top",
-    )
+        0.742, 0.878, f"NO\u2082, mean of {period} [\u00b5g/m\u00b3]", fontsize=11.5,
+        weight="bold", color=palette.INK, va="top",
+    )  # fmt: skip
     figure.text(
         0.742,
         0.852,
@@ -105,14 +130,14 @@ def draw_concentration(axes: Axes, figure: Figure, result: Result, frame: Frame)
         va="top",
         linespacing=1.25,
     )
-    return None if grid is not None else (colours, norm)
 
 
 def _ticks(limits: FloatArray) -> FloatArray:
     """About six of the class limits, at whole multiples of some of their steps."""
     step = limits[1] - limits[0]
     every = max(1, round(len(limits) / 6))
-    return limits[np.round(limits / step).astype(np.int64) % every == 0]
+    ticks: FloatArray = limits[np.round(limits / step).astype(np.int64) % every == 0]
+    return ticks
 
 
 def wrapped(text: str, width: int = 30) -> str:
@@ -201,23 +226,35 @@ def draw_roads(axes: Axes, result: Result, frame: Frame) -> list[Any]:
                 label = name or link
                 if part.length > stretches.get(label, LineString()).length:
                     stretches[label] = part
+    taken: list[FloatArray] = []
     for label, stretch in stretches.items():
-        _name_road(axes, label, stretch, frame)
+        _name_road(axes, label, stretch, frame, taken)
     return [Patch(facecolor=palette.ROAD, edgecolor="#ffffff", label="road, true width")]
 
 
-def _name_road(axes: Axes, label: str, stretch: Any, frame: Frame) -> None:
+def _name_road(axes: Axes, label: str, stretch: Any, frame: Frame, taken: list[FloatArray]) -> None:
+    """Write a name along its road, as far from the names in `taken` as the road allows."""
     from matplotlib.patheffects import withStroke
 
     # about the length of the words at this size, so that they stay on the road
     reach = 0.0105 * (frame.east - frame.west) * len(label)
     if stretch.length < reach:
         return
-    at = min(max(0.80 * stretch.length, reach / 2), stretch.length - reach / 2)
+    places = [
+        min(max(share * stretch.length, reach / 2), stretch.length - reach / 2)
+        for share in (0.80, 0.50, 0.20)
+    ]
+
+    def clearance(place: float) -> float:
+        at = np.asarray(stretch.interpolate(place).coords[0])
+        return min((float(np.hypot(*(at - other))) for other in taken), default=0.0)
+
+    at = max(places, key=clearance)
     before, middle, after = (
         np.asarray(stretch.interpolate(place).coords[0])
         for place in (at - reach / 2, at, at + reach / 2)
     )
+    taken.append(middle)
     run = after - before
     angle = float(np.degrees(np.arctan2(run[1], run[0])))
     angle = (angle + 90.0) % 180.0 - 90.0

@@ -8,8 +8,6 @@ import numpy as np
 
 from roaddisp.model import Result
 
-_HOURS = "hours since {start} 00:00:00"
-
 
 def write_netcdf(result: Result, path: Path) -> None:
     """Write ``hourly.nc`` by the CF conventions 1.8, as time series at points.
@@ -33,7 +31,7 @@ def write_netcdf(result: Result, path: Path) -> None:
     hourly["receptor"].attrs["cf_role"] = "timeseries_id"
     hourly["crs"] = xr.DataArray(np.int32(0), attrs=CRS.from_user_input(result.study.crs).to_cf())
     hourly.attrs = {"Conventions": "CF-1.8", "featureType": "timeSeries", **hourly.attrs}
-    units = _HOURS.format(start=np.datetime_as_string(begin[0], unit="D"))
+    units = f"hours since {np.datetime_as_string(begin[0], unit='D')}"
     clock = {"units": units, "calendar": "standard", "dtype": "int32"}
     encoding: dict[str, dict[str, object]] = {
         "time": {**clock, "_FillValue": None},

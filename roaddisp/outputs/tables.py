@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import warnings
 from pathlib import Path
 from typing import TYPE_CHECKING, NamedTuple
 
@@ -10,6 +9,7 @@ import numpy as np
 
 from roaddisp.model import FloatArray, Result, Verdicts
 from roaddisp.outputs.cautions import cautions
+from roaddisp.standards.statistics import over_years
 
 if TYPE_CHECKING:
     import pandas as pd
@@ -106,7 +106,7 @@ def receptor_table(result: Result) -> pd.DataFrame:
     place = result.scenario.receptors
     annual = result.statistics
     factor = result.scenario.options.ugm3_per_ppb
-    no2_mean = _over_years(np.fmax, annual.no2_mean_ppb)
+    no2_mean = over_years(annual, "no2_mean_ppb")
     values: dict[str, object] = {
         "receptor": list(place.receptor),
         "site": list(place.site),
@@ -117,13 +117,13 @@ def receptor_table(result: Result) -> pd.DataFrame:
         "latitude": place.latitude,
         "z_m": place.z,
         "on_road": place.on_road,
-        "nox_road_mean_ugm3": _over_years(np.fmax, annual.nox_road_mean_ugm3),
+        "nox_road_mean_ugm3": over_years(annual, "nox_road_mean_ugm3"),
         "no2_mean_ugm3": no2_mean * factor,
         "no2_mean_ppb": no2_mean,
-        "no2_road_mean_ugm3": _over_years(np.fmax, annual.no2_road_mean_ppb) * factor,
-        "no2_1h_max_ppb": _over_years(np.fmax, annual.no2_1h_max_ppb),
-        "no2_1h_p98_ppb": _mean_of_years(annual.no2_1h_p98_ppb),
-        "no2_1h_19th_ugm3": _over_years(np.fmax, annual.no2_1h_19th_ppb) * factor,
+        "no2_road_mean_ugm3": over_years(annual, "no2_road_mean_ppb") * factor,
+        "no2_1h_max_ppb": over_years(annual, "no2_1h_max_ppb"),
+        "no2_1h_p98_ppb": over_years(annual, "no2_1h_p98_ppb"),
+        "no2_1h_19th_ugm3": over_years(annual, "no2_1h_19th_ppb") * factor,
     }
     for verdict in result.verdicts:
         values[f"{verdict.standard}_value"] = verdict.value
@@ -133,18 +133,6 @@ def receptor_table(result: Result) -> pd.DataFrame:
     table = pd.DataFrame({name: values[name] for name in described})
     table.attrs["columns"] = {name: column._asdict() for name, column in described.items()}
     return table
-
-
-def _over_years(pick: np.ufunc, by_year: FloatArray) -> FloatArray:
-    picked: FloatArray = pick.reduce(by_year, axis=0)
-    return picked
-
-
-def _mean_of_years(by_year: FloatArray) -> FloatArray:
-    with warnings.catch_warnings():
-        warnings.filterwarnings("ignore", "Mean of empty slice", RuntimeWarning)
-        mean: FloatArray = np.nanmean(by_year, axis=0)
-    return mean
 
 
 # --- files ------------------------------------------------------------------------

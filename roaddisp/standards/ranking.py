@@ -8,7 +8,7 @@ import numpy as np
 from roaddisp.dispersion.compiling import parallel_compiled
 from roaddisp.model import BoolArray, FloatArray, IntArray
 
-COLUMNS = 8
+COLUMNS = 10
 
 
 @parallel_compiled
@@ -16,6 +16,7 @@ def statistics_of_years(
     nox: FloatArray,
     no2: FloatArray,
     calm: BoolArray,
+    raised: BoolArray,
     no2_background: FloatArray,
     nox_background: FloatArray,
     year_day: IntArray,
@@ -27,7 +28,8 @@ def statistics_of_years(
 
     The columns are mean NOx of the roads, mean NO2, mean NO2 less
     background, means of the roads' NOx and of the background's over the same hours,
-    highest hour, 98th percentile of daily maxima, ``rank``-th highest hour.
+    highest hour, 98th percentile of daily maxima, ``rank``-th highest hour, and how
+    many of the hours down to that percentile and that rank are ``raised`` ones.
     """
     receptors = no2.shape[0]
     years = year_day.size - 1
@@ -37,7 +39,9 @@ def statistics_of_years(
     out = np.full((COLUMNS, years, receptors), np.nan)
     for r in nb.prange(receptors):
         daily = np.empty(longest)
+        hour_of = np.empty(longest, dtype=np.int64)
         top = np.empty(rank)
+        top_hour = np.empty(rank, dtype=np.int64)
         for y in range(years):
             sums = np.zeros(5)
             count_nox, count_no2, count_total = 0, 0, 0
@@ -46,6 +50,7 @@ def statistics_of_years(
             for d in range(year_day[y], year_day[y + 1]):
                 here = 0
                 highest = -np.inf
+                when = 0
                 for t in range(day_hour[d], day_hour[d + 1]):
                     road = nox[r, t]
                     if not np.isnan(road):
@@ -64,15 +69,20 @@ def statistics_of_years(
                     sums[1] += value
                     sums[2] += value - no2_background[t]
                     count_no2 += 1
-                    highest = max(highest, value)
+                    if value > highest:
+                        highest = value
+                        when = t
                     if value > top[rank - 1]:
                         k = rank - 1
                         while k > 0 and top[k - 1] < value:
                             top[k] = top[k - 1]
+                            top_hour[k] = top_hour[k - 1]
                             k -= 1
                         top[k] = value
+                        top_hour[k] = t
                 if here >= least_hours and highest > -np.inf:
                     daily[ranked] = highest
+                    hour_of[ranked] = when
                     ranked += 1
             if count_nox > 0:
                 out[0, y, r] = sums[0] / count_nox
@@ -85,7 +95,10 @@ def statistics_of_years(
                 out[5, y, r] = top[0]
             if ranked > 0:
                 nth = -(-2 * ranked // 100)
-                out[6, y, r] = np.sort(daily[:ranked])[ranked - nth]
+                order = np.argsort(daily[:ranked])
+                out[6, y, r] = daily[order[ranked - nth]]
+                out[8, y, r] = raised[hour_of[order[ranked - nth :]]].sum()
             if count_no2 >= rank:
                 out[7, y, r] = top[rank - 1]
+                out[9, y, r] = raised[top_hour].sum()
     return out

@@ -82,6 +82,7 @@ def block_statistics(
     clock: Clock,
     background: Background,
     calm: BoolArray,
+    raised: BoolArray,
     ugm3_per_ppb: float,
 ) -> Statistics:
     """Statistics of a block of receptors.
@@ -97,6 +98,8 @@ def block_statistics(
     calm : (T,) bool
         Hours without a value for calm, which count as present. Where they were
         run in the worst direction they have one and count by it.
+    raised : (T,) bool
+        Hours whose wind a floor has raised, counted among those that make a statistic.
     ugm3_per_ppb : float
         Of the study, by which ``nox_road_ugm3`` is turned to ppb.
 
@@ -110,6 +113,21 @@ def block_statistics(
     ------
     ValueError
         Where the arrays do not have the run's hours.
+
+    Examples
+    --------
+    >>> import numpy as np
+    >>> hours = np.datetime64("2024-05-14T00:00", "m") + 60 * np.arange(24)
+    >>> made = block_statistics(
+    ...     np.full((1, 24), 40.0),
+    ...     np.arange(24.0)[None, :],
+    ...     clock=Clock(hours, hours, utc_offset=0.0, timezone="UTC"),
+    ...     background=Background(np.full(24, 30.0), np.full(24, 1.5), None),
+    ...     calm=np.zeros(24, dtype=bool),
+    ...     ugm3_per_ppb=1.9125,
+    ... )
+    >>> made.no2_mean_ppb, made.no2_road_mean_ppb, made.no2_1h_p98_ppb
+    (array([[11.5]]), array([[10.]]), array([[23.]]))
     """
     from roaddisp.dispersion.compiling import ONE_AT_A_TIME
     from roaddisp.standards.ranking import statistics_of_years
@@ -129,6 +147,7 @@ def block_statistics(
             nox,
             no2,
             np.asarray(calm, dtype=np.bool_),
+            np.asarray(raised, dtype=np.bool_),
             no2_background,
             nox_background,
             hours.year_day.astype(np.int64),
@@ -136,7 +155,7 @@ def block_statistics(
             HOURS_OF_A_DAY,
             RANK_OF_18_PERMITTED,
         )
-    mean_nox, mean_no2, added, shared, under, highest, p98, nineteenth = columns
+    mean_nox, mean_no2, added, shared, under, highest, p98, nineteenth, *raised_in = columns
     return Statistics(
         years=hours.years,
         nox_road_mean_ugm3=mean_nox,
@@ -148,6 +167,8 @@ def block_statistics(
         # cutting off digits keeps the order, so it may follow the ranking
         no2_1h_p98_truncated_ppb=truncated(p98),
         no2_1h_19th_ppb=nineteenth,
+        raised_in_p98=raised_in[0],
+        raised_in_19th=raised_in[1],
     )
 
 
@@ -167,6 +188,13 @@ def join_statistics(blocks: Iterable[Statistics]) -> Statistics:
     ------
     ValueError
         Where there is no block, or their years differ.
+
+    Examples
+    --------
+    >>> import numpy as np
+    >>> block = Statistics(np.array([2023]), *(np.array([[10.0, 12.0]]) for _ in range(10)))
+    >>> join_statistics([block, block]).no2_mean_ppb
+    array([[10., 12., 10., 12.]])
     """
     parts = list(blocks)
     if not parts:
@@ -199,7 +227,7 @@ def over_years(statistics: Statistics, column: str) -> FloatArray:
     --------
     >>> import numpy as np
     >>> years = np.array([2022, 2023])
-    >>> filled = Statistics(years, *(np.array([[10.0], [13.0]]) for _ in range(8)))
+    >>> filled = Statistics(years, *(np.array([[10.0], [13.0]]) for _ in range(10)))
     >>> float(over_years(filled, "no2_1h_p98_ppb")[0]), float(over_years(filled, "no2_mean_ppb")[0])
     (11.5, 13.0)
     """

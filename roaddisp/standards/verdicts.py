@@ -68,6 +68,22 @@ def judge(
     Verdicts
         ``undetermined``, with the reason, where data are incomplete, a year has no
         value, or calm hours in the worst direction would change the answer.
+
+    Examples
+    --------
+    >>> import numpy as np
+    >>> from roaddisp.standards.rules import standard
+    >>> year = np.array([2023])
+    >>> made = judge(
+    ...     standard("eu-2008-annual"),
+    ...     Statistics(year, *(np.array([[20.0, 22.0]]) for _ in range(8))),
+    ...     None,
+    ...     kinds=("home", "roadside"),
+    ...     on_road=np.array([False, False]),
+    ...     completeness=Completeness(year, np.ones(1), np.ones((1, 4))),
+    ... )
+    >>> made.value, made.met
+    (array([38., 42.]), ('yes', ''))
     """
     value = _in_unit(standard, regulatory)
     yes = value <= standard.level
@@ -121,4 +137,4 @@ def _no_value(standard: Standard) -> str:
 def _provisional(standard: Standard, years: int) -> str:
     if years >= standard.years_asked:
         return ""
-    return f"provisional: {years} of the {standard.years_asked} years that guidance asks"
+    return f"{years} of the {standard.years_asked} years that guidance asks"

@@ -142,6 +142,14 @@ class Completeness:
         -------
         str
             Empty where every year is complete.
+
+        Examples
+        --------
+        >>> import numpy as np
+        >>> from roaddisp.standards.rules import standard
+        >>> thin = Completeness(np.array([2023]), np.array([0.6]), np.ones((1, 4)))
+        >>> thin.lack(standard("us-naaqs-annual")).split(";")[0]
+        'incomplete data: 2023 has 60.0 % of its hours'
         """
         lacking = []
         for place, year in enumerate(self.years):

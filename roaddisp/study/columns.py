@@ -16,15 +16,14 @@ from roaddisp.quantities import (
     FromMass,
     QuantityError,
     check_unit,
-    parse_number,
-    parse_quantity,
     spellings,
     split_header,
     to_inside,
 )
+from roaddisp.study.cells import bound, is_nothing, is_number, taken
 from roaddisp.study.problems import Problems, listed, nearest
 from roaddisp.study.raw import RawTable, as_text, near_header
-from roaddisp.study.tables import Column, Table
+from roaddisp.study.table_types import Column, Table
 
 _WORDS: Final = frozenset({"id", "text", "time"})
 _PLAIN: Final = frozenset({"number", "integer"})
@@ -40,7 +39,7 @@ class ColumnMap:
     ours : mapping of our name to ``"THEIRS [unit]"``
     file, place : callable
         The settings file, and where in it a key of the mapping stands.
-    lenient : bool
+    lenient : set of our names
         Shared by several files of the section: a header that one of them lacks
         is looked for under our own name there.
     used : set of our names found so far
@@ -49,7 +48,7 @@ class ColumnMap:
     ours: Mapping[str, str] = field(default_factory=dict)
     file: str = "study.toml"
     place: Callable[[str], str] = lambda _name: ""
-    lenient: bool = False
+    lenient: frozenset[str] = frozenset()
     used: set[str] = field(default_factory=set)
 
 
@@ -80,6 +79,7 @@ class TableView:
         self.complete = True
         self.clean = True
         self._sources: dict[str, _Source] = {}
+        self._words: dict[str, list[str]] = {}
         for column in spec.columns:
             self._resolve(column)
         self._refuse_later()
@@ -117,7 +117,7 @@ class TableView:
         found = self._candidates(mapped) if mapped is not None else []
         if found:
             self.mapping.used.add(column.name)
-        elif mapped is None or self.mapping.lenient:
+        elif mapped is None or column.name in self.mapping.lenient:
             found = self._candidates(column.name)
             mapped = None
         if not found:
@@ -126,12 +126,16 @@ class TableView:
         if len(found) > 1:
             self.complete = False
             self.problems.error(
-                f"two columns could be {column.name!r}", file=self.table.file,
-                place=self.table.place(), value=listed(self.table.names[i] for i in found),
-                allowed="one", mend="choose one by `columns` in study.toml, written as its header",
+                f"two columns could be {column.name!r}",
+                file=self.table.file,
+                place=self.table.place(),
+                value=listed(self.table.names[i] for i in found),
+                allowed="one",
+                mend="choose one by `columns` in study.toml, written as its header",
             )
             return
         index = found[0]
+        self._sources[column.name] = _Source(index, None)
         unit = self._unit(column, index, mapped)
         self._sources[column.name] = _Source(index, unit)
 
@@ -148,8 +152,10 @@ class TableView:
             name = split_header(mapped)[0]
             self.clean = False
             self.problems.error(
-                f"{self.table.file} has no column {name!r}", file=self.mapping.file,
-                place=self.mapping.place(column.name), value=mapped,
+                f"{self.table.file} has no column {name!r}",
+                file=self.mapping.file,
+                place=self.mapping.place(column.name),
+                value=mapped,
                 allowed=f"a column of {self.table.file}: {listed(self.table.names)}",
                 mend=near_header(name, self.table),
             )
@@ -158,7 +164,8 @@ class TableView:
             unit = f" [{next(iter(UNITS[column.quantity]))}]" if self._needs_unit(column) else ""
             self.problems.error(
                 f"the column {column.name!r} ({column.meaning}) is missing",
-                file=self.table.file, place=self.table.place(),
+                file=self.table.file,
+                place=self.table.place(),
                 allowed=f"a column {column.name + unit!r}, or one named by `columns`",
                 mend=near_header(column.name, self.table),
             )
@@ -174,81 +181,105 @@ class TableView:
         if in_map is not None and in_header is not None and in_map != in_header:
             self.complete = False
             self.problems.error(
-                "the header and `columns` give different units", file=self.mapping.file,
-                place=self.mapping.place(column.name), value=f"{in_map}, {in_header}",
-                allowed="one unit", mend="correct the one that is wrong",
+                "the header and `columns` give different units",
+                file=self.mapping.file,
+                place=self.mapping.place(column.name),
+                value=f"{in_map}, {in_header}",
+                allowed="one unit",
+                mend="correct the one that is wrong",
             )
             return None
         if column.quantity in _WORDS | _PLAIN:
             if unit is not None:
                 self.complete = False
-                self.error("a unit in brackets where none belongs", column.name, value=f"[{unit}]",
-                           allowed="no bracket: counts, ids, names and times have no unit",
-                           mend="leave the bracket away, or look whether the column is right")
+                self.error(
+                    "a unit in brackets where none belongs",
+                    column.name,
+                    value=f"[{unit}]",
+                    allowed="no bracket: counts, ids, names and times have no unit",
+                    mend="leave the bracket away, or look whether the column is right",
+                )
             return None
         if unit is None:
-            self._without_unit(column, index)
-            return None
+            return None if self._may_lack_unit(column, index) else _UNKNOWN
         try:
             check_unit(column.quantity, unit)
         except QuantityError as error:
             self.complete = False
-            self.error(str(error), column.name, value=f"[{unit}]", allowed=error.allowed,
-                       mend=error.mend)
+            self.error(
+                str(error), column.name, value=f"[{unit}]", allowed=error.allowed, mend=error.mend
+            )
             return _UNKNOWN
         return unit
 
-    def _without_unit(self, column: Column, index: int) -> None:
-        if not self._needs_unit(column):
-            return
+    def _may_lack_unit(self, column: Column, index: int) -> bool:
+        """Whether a column without a unit can be read: no unit needed, or one in each value."""
         cells = self.table.cells[index]
-        if self.table.is_layer and not any(_is_number(cell) for cell in cells):
-            return
-        self.complete = False
+        if not self._needs_unit(column):
+            return True
+        if self.table.is_layer and not any(is_number(cell) for cell in cells):
+            return True
         first = next((row for row, cell in enumerate(cells) if as_text(cell)), None)
         if first is None:
-            return
+            return True
+        self.complete = False
         theirs = self.table.names[index]
         unit = next(iter(UNITS[column.quantity]))
         ways = f'columns = {{ {column.name} = "{theirs} [{unit}]" }} in study.toml'
         if not self.table.is_layer:
             ways = f'the header "{theirs} [{unit}]", or {ways}'
         self.problems.error(
-            f"numbers without a unit, where a {column.quantity} is needed", file=self.table.file,
-            place=self.table.place(first, theirs), value=as_text(cells[first]),
-            allowed=spellings(column.quantity), mend=f"give the unit by {ways}",
+            f"numbers without a unit, where a {column.quantity} is needed",
+            file=self.table.file,
+            place=self.table.place(first, theirs),
+            value=as_text(cells[first]),
+            allowed=spellings(column.quantity),
+            mend=f"give the unit by {ways}",
         )
+        return False
 
     def _refuse_later(self) -> None:
         for column in self.spec.columns:
             if not column.later or not self.has(column.name):
                 continue
             cells = self.table.cells[self._sources[column.name].index]
-            rows = [row for row, cell in enumerate(cells) if not _is_nothing(cell)]
+            rows = [row for row, cell in enumerate(cells) if not is_nothing(cell)]
             if rows:
                 self.error(
                     f"not in this version: the column {column.name!r} ({column.meaning})",
-                    column.name, rows[0], value=as_text(cells[rows[0]]), allowed="empty or zero",
-                    mend="leave the column out", count=len(rows),
+                    column.name,
+                    rows[0],
+                    value=as_text(cells[rows[0]]),
+                    allowed="empty or zero",
+                    mend="leave the column out",
+                    count=len(rows),
                 )
 
     def _doubt_near_misses(self) -> None:
-        taken = {source.index for source in self._sources.values()}
+        in_use = {source.index for source in self._sources.values()}
         absent = [name for name in self.spec.names if not self.has(name)]
         required = {column.name for column in self.spec.columns if column.required}
         for index, header in enumerate(self.table.names):
-            near = nearest(split_header(header)[0], absent) if index not in taken else None
+            near = nearest(split_header(header)[0], absent) if index not in in_use else None
             if near is not None and near not in required and near not in self.mapping.ours:
                 self.problems.caution(
-                    "a column that is not read", file=self.table.file,
-                    place=self.table.place(None, header), value=header,
-                    allowed=f"{near!r} is read", mend=f"did you mean {near!r}? (case matters)",
+                    "a column that is not read",
+                    file=self.table.file,
+                    place=self.table.place(None, header),
+                    value=header,
+                    allowed=f"{near!r} is read",
+                    mend=f"did you mean {near!r}? (case matters)",
                 )
 
     # --- the cells ------------------------------------------------------------
 
     def words(self, name: str) -> list[str]:
         """Take a column of ids, names or choices; empty where missing."""
+        if name not in self._words:
+            self._words[name] = self._take_words(name)
+        return self._words[name]
+
+    def _take_words(self, name: str) -> list[str]:
         column = self.spec.column(name)
         if not self.has(name):
             return [""] * len(self)
@@ -279,7 +310,7 @@ class TableView:
         known: dict[str, float | QuantityError] = {}
         for row, cell in enumerate(cells):
             text = cell if isinstance(cell, str) else None
-            if text is None and _is_number(cell):
+            if text is None and is_number(cell):
                 values[row] = float(cell)
                 if np.isinf(values[row]):
                     values[row] = np.nan
@@ -287,7 +318,7 @@ class TableView:
                 continue
             text = as_text(cell) if text is None else text
             if text not in known:
-                known[text] = _taken(text, column.quantity if by_cell else "", from_mass)
+                known[text] = taken(text, column.quantity if by_cell else "", from_mass)
             answer = known[text]
             if isinstance(answer, QuantityError):
                 bad.note(row, text, str(answer), answer.allowed, answer.mend)
@@ -313,18 +344,18 @@ class TableView:
             wrong |= np.isfinite(values) & (values != np.round(values))
         unit = f" {inside}" if inside else ""
         whole = "a whole number, " if column.quantity == "integer" else ""
-        allowed = f"{whole}{_bound(low)} to {_bound(high)}{unit}"
-        for row in np.flatnonzero(wrong):
+        allowed = f"{whole}{bound(low)} to {bound(high)}{unit}"
+        for row in np.flatnonzero(wrong).tolist():
             mend = "correct the value"
             if inside:
                 mend = "correct the value, or the unit of the column"
             found = as_text(cells[row])
-            bad.note(int(row), found, "a value out of range", allowed, mend)
+            bad.note(row, found, "a value out of range", allowed, mend)
         values[wrong] = np.nan
         if column.required and not column.empty:
-            for row in np.flatnonzero(np.isnan(values)):
+            for row in np.flatnonzero(np.isnan(values)).tolist():
                 if not as_text(cells[row]):
-                    bad.note(int(row), "", "an empty cell", "a value in every row", "fill it in")
+                    bad.note(row, "", "an empty cell", "a value in every row", "fill it in")
 
 
 class _Refused:
@@ -342,37 +373,12 @@ class _Refused:
 
     def report(self) -> None:
         for message, (row, value, allowed, mend) in self.first.items():
-            self.view.error(message, self.name, row, value=value, allowed=allowed, mend=mend,
-                            count=self.count[message])
-
-
-def _is_number(cell: Any) -> bool:
-    return isinstance(cell, int | float | np.number) and not isinstance(cell, bool | np.bool_)
-
-
-def _is_nothing(cell: Any) -> bool:
-    """Whether a cell is empty or a plain zero."""
-    text = as_text(cell)
-    if not text:
-        return True
-    try:
-        return parse_number(text.split(" ")[0]) == 0.0
-    except QuantityError:
-        return False
-
-
-def _taken(text: str, quantity: str, from_mass: FromMass | None) -> float | QuantityError:
-    if not text.strip():
-        return float("nan")
-    try:
-        if quantity:
-            return parse_quantity(text, quantity, from_mass=from_mass)
-        return parse_number(text)
-    except QuantityError as error:
-        return error
-
-
-def _bound(value: float) -> str:
-    if np.isinf(value):
-        return "any"
-    return f"{value:g}" if abs(value) < 1e6 else f"{value:.0f}"
+            self.view.error(
+                message,
+                self.name,
+                row,
+                value=value,
+                allowed=allowed,
+                mend=mend,
+                count=self.count[message],
+            )

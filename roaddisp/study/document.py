@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import inspect
 import textwrap
 from typing import Any
 
@@ -9,7 +10,8 @@ from pydantic.fields import FieldInfo
 
 from roaddisp.quantities import INSIDE, UNITLESS, UNITS, spellings
 from roaddisp.study.schema import NEEDED, SECTIONS, Section
-from roaddisp.study.tables import TABLES, Column, Table
+from roaddisp.study.table_types import Column, Table
+from roaddisp.study.tables import TABLES
 
 _WIDTH = 96
 
@@ -81,7 +83,7 @@ hour that the clock skips is an error. An empty cell is a missing value.
 
 def _section(name: str, section: type[Section]) -> str:
     lines = [f"## `[{name}]` in study.toml ({'required' if name in NEEDED else 'optional'})", ""]
-    lines += [(section.__doc__ or "").strip(), ""]
+    lines += [inspect.cleandoc(section.__doc__ or ""), ""]
     for key, field in section.model_fields.items():
         default = field.get_default()
         if field.is_required():
@@ -119,7 +121,7 @@ def _scenarios() -> str:
 The keys outside `[scenario]` are the scenario "base". Each further scenario overrides any of
 them, as `roads.file = "build.gpkg"` below `[scenario.build]`, or below `[scenario.build.roads]`.
 A table given whole, in braces, replaces the base's: `air = { file = "air2.csv" }` keeps none of
-the base's keys of `[air]`. Giving one of two alternatives (profiles or counts; file or constant)
+the base's keys of `[air]`. Giving one of the two alternatives of `[air]`, file or constant,
 removes the other. `[study]` keys are the study's own: `timezone` and `crs` are the same in all.
 """
 

@@ -65,7 +65,8 @@ class Folder:
             return None
         if not inside:
             refuse(
-                "the path leads out of the study folder (by a link)", outside,
+                "the path leads out of the study folder (by a link)",
+                outside,
                 "copy the file into the folder",
             )
         elif not there:
@@ -130,15 +131,21 @@ def decode(content: bytes, problems: Problems, file: str) -> str | None:
     """
     if content[:2] in (b"\xff\xfe", b"\xfe\xff") or content[:4] == b"\x00\x00\xfe\xff":
         problems.error(
-            "the text is in UTF-16 or UTF-32", file=file, place="line 1", allowed="UTF-8",
+            "the text is in UTF-16 or UTF-32",
+            file=file,
+            place="line 1",
+            allowed="UTF-8",
             mend="save it as UTF-8 (a spreadsheet calls it 'CSV UTF-8')",
         )
         return None
     nul = content.find(b"\x00")
     if nul >= 0:
         problems.error(
-            "a NUL byte in a text file", file=file, place=_byte_place(content, nul),
-            value="0x00", allowed="UTF-8 text",
+            "a NUL byte in a text file",
+            file=file,
+            place=_byte_place(content, nul),
+            value="0x00",
+            allowed="UTF-8 text",
             mend="look whether the file is damaged, or is no text file at all",
         )
         return None
@@ -147,8 +154,11 @@ def decode(content: bytes, problems: Problems, file: str) -> str | None:
     except UnicodeDecodeError as error:
         at = error.start + (3 if content.startswith(b"\xef\xbb\xbf") else 0)
         problems.error(
-            "the text is not UTF-8", file=file, place=_byte_place(content, at),
-            value=f"0x{content[at]:02x}", allowed="UTF-8",
+            "the text is not UTF-8",
+            file=file,
+            place=_byte_place(content, at),
+            value=f"0x{content[at]:02x}",
+            allowed="UTF-8",
             mend="save it as UTF-8 (a spreadsheet calls it 'CSV UTF-8')",
         )
         return None

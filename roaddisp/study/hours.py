@@ -35,8 +35,12 @@ def read_times(
     """Take the column ``time`` of a table; note every time that cannot be taken."""
     cells = view.words("time")
     instants = to_utc(
-        cells, clock=rules.clock, hour_ending=rules.hour_ending, zone=rules.zone,
-        offset=offset, series=series,
+        cells,
+        clock=rules.clock,
+        hour_ending=rules.hour_ending,
+        zone=rules.zone,
+        offset=offset,
+        series=series,
     )
     first: dict[Fault, tuple[int, int]] = {}
     for row, fault in instants.faults:
@@ -44,8 +48,15 @@ def read_times(
             at, count = first.get(fault, (row, 0))
             first[fault] = (at, count + 1)
     for fault, (row, count) in first.items():
-        view.error(fault.message, "time", row, value=cells[row], allowed=fault.allowed,
-                   mend=fault.mend, count=count)
+        view.error(
+            fault.message,
+            "time",
+            row,
+            value=cells[row],
+            allowed=fault.allowed,
+            mend=fault.mend,
+            count=count,
+        )
     return instants
 
 
@@ -70,15 +81,23 @@ def check_order(
         latest = max(latest, minute)
     if repeats:
         view.error(
-            "an hour that stands twice", "time", repeats[0], value=cells[repeats[0]],
+            "an hour that stands twice",
+            "time",
+            repeats[0],
+            value=cells[repeats[0]],
             allowed="each hour once" + (" for each link and class" if series is not None else ""),
             mend="delete one of the rows; or look whether the clock in study.toml is right",
             count=len(repeats),
         )
     if back:
         view.error(
-            "a time earlier than the row above it", "time", back[0], value=cells[back[0]],
-            allowed="rows in the order of time", mend="sort the rows by time", count=len(back),
+            "a time earlier than the row above it",
+            "time",
+            back[0],
+            value=cells[back[0]],
+            allowed="rows in the order of time",
+            mend="sort the rows by time",
+            count=len(back),
         )
     return not repeats and not back
 
@@ -89,11 +108,14 @@ def lines_up(view: TableView, utc: IntArray, first: int) -> bool:
     if off.size:
         row = int(off[0])
         view.error(
-            "hours that begin at other minutes than those of the weather", "time", row,
+            "hours that begin at other minutes than those of the weather",
+            "time",
+            row,
             value=view.words("time")[row],
             allowed="hours that begin when those of the weather do",
             mend="look at the clocks in study.toml: a zone half an hour off UTC needs files in "
-            "one clock", count=off.size,
+            "one clock",
+            count=off.size,
         )
     return not off.size
 
@@ -103,15 +125,20 @@ def axis_of(
 ) -> tuple[Clock, IntArray] | None:
     """Make the run's axis from the first to the last row, and the hour of each row on it."""
     utc = instants.utc
-    if instants.faults or not check_order(view, utc, strict=True) or not lines_up(
-        view, utc, int(utc[0])
-    ):  # fmt: skip
+    if (
+        instants.faults
+        or not check_order(view, utc, strict=True)
+        or not lines_up(view, utc, int(utc[0]))
+    ):
         return None
     hours = int((utc[-1] - utc[0]) // 60) + 1
     if hours > _LONGEST_RUN:
         view.error(
-            f"{hours} hours from the first row to the last", "time", len(view) - 1,
-            value=view.words("time")[-1], allowed=f"at most {_LONGEST_RUN} (twelve years)",
+            f"{hours} hours from the first row to the last",
+            "time",
+            len(view) - 1,
+            value=view.words("time")[-1],
+            allowed=f"at most {_LONGEST_RUN} (twelve years)",
             mend="look for a year that is mistyped",
         )
         return None
@@ -135,10 +162,8 @@ def caution_missing(
     if count:
         first = clock.standard[int(np.argmax(missing))]
         view.caution(
-            f"{what} is missing in {count} of {missing.size} hours", column,
+            f"{what} is missing in {count} of {missing.size} hours",
+            column,
             value=f"first {first} local standard time",
-            mend="fill the gap from the station's records, or accept that these hours are "
-            "left out",
+            mend="fill the gap from the station's records, or accept that these hours are left out",
         )
-
-

@@ -61,8 +61,10 @@ def read_layer(path: Path, name: str, layer: str | None, problems: Problems) -> 
             return _read(path, name, layer, problems)
     except _errors() as error:
         problems.error(
-            f"the file cannot be read ({_first_line(error)})", file=name,
-            allowed=FORMAT_NAMES, mend="look whether it was copied whole, and opens in a GIS",
+            f"the file cannot be read ({_first_line(error)})",
+            file=name,
+            allowed=FORMAT_NAMES,
+            mend="look whether it was copied whole, and opens in a GIS",
         )
         return None
 
@@ -99,7 +101,8 @@ def _quiet(problems: Problems, name: str) -> Iterator[None]:
         yield
     for warning in said:
         problems.caution(
-            f"the reading library says: {_first_line(Exception(warning.message))}", file=name,
+            f"the reading library says: {_first_line(Exception(warning.message))}",
+            file=name,
             mend="look whether the file is sound",
         )
 
@@ -108,8 +111,11 @@ def _content_fits(path: Path, name: str, problems: Problems) -> bool:
     suffix = path.suffix.lower()
     if suffix not in FORMATS:
         problems.error(
-            "not a vector format that is read", file=name, value=suffix or "no ending",
-            allowed=FORMAT_NAMES, mend="export the layer to one of them",
+            "not a vector format that is read",
+            file=name,
+            value=suffix or "no ending",
+            allowed=FORMAT_NAMES,
+            mend="export the layer to one of them",
         )
         return False
     start, called, _ = FORMATS[suffix]
@@ -118,8 +124,10 @@ def _content_fits(path: Path, name: str, problems: Problems) -> bool:
     plain = head.removeprefix(b"\xef\xbb\xbf").lstrip() if start == b"{" else head
     if not plain.startswith(start):
         problems.error(
-            f"the content is not that of a {called} file", file=name,
-            value=repr(head[:16]), allowed=FORMAT_NAMES,
+            f"the content is not that of a {called} file",
+            file=name,
+            value=repr(head[:16]),
+            allowed=FORMAT_NAMES,
             mend="look whether the file is damaged, or has another format than its name says",
         )
         return False
@@ -130,9 +138,11 @@ def _content_fits(path: Path, name: str, problems: Problems) -> bool:
         lacking = sorted({".dbf", ".shx"} - have)
         if lacking or away:
             problems.error(
-                "the files of a Shapefile belong together", file=name,
+                "the files of a Shapefile belong together",
+                file=name,
                 value=f"missing {', '.join(lacking)}" if lacking else "a link out of the folder",
-                allowed=".shp, .shx, .dbf and .prj side by side", mend="copy all of them",
+                allowed=".shp, .shx, .dbf and .prj side by side",
+                mend="copy all of them",
             )
             return False
     return True
@@ -148,7 +158,9 @@ def _read(path: Path, name: str, layer: str | None, problems: Problems) -> RawTa
         return None
     if layer is None and len(layers) > 1:
         problems.error(
-            "the file has several layers", file=name, value=listed(layers),
+            "the file has several layers",
+            file=name,
+            value=listed(layers),
             allowed="one, named by the key `layer`",
             mend=f'write layer = "{layers[0]}", or another of them, in study.toml',
         )
@@ -156,7 +168,10 @@ def _read(path: Path, name: str, layer: str | None, problems: Problems) -> RawTa
     if layer is not None and layer not in layers:
         near = nearest(layer, layers)
         problems.error(
-            "the file has no such layer", file=name, value=layer, allowed=listed(layers),
+            "the file has no such layer",
+            file=name,
+            value=layer,
+            allowed=listed(layers),
             mend=f"did you mean {near!r}?" if near else "name one of them",
         )
         return None
@@ -164,20 +179,28 @@ def _read(path: Path, name: str, layer: str | None, problems: Problems) -> RawTa
     driver = str(pyogrio.read_info(path, layer=layer)["driver"])
     if driver != FORMATS[path.suffix.lower()][2]:
         problems.error(
-            "the content is of another format", file=name, value=driver, allowed=FORMAT_NAMES,
+            "the content is of another format",
+            file=name,
+            value=driver,
+            allowed=FORMAT_NAMES,
             mend="export the layer to one of them",
         )
         return None
     meta, _, geometry, fields = pyogrio.raw.read(path, layer=layer, force_2d=True)
     if geometry is None:
         problems.error(
-            "the layer has no geometry", file=name, place=f"layer {layer!r}",
-            allowed="a layer of features", mend="name a layer of features by the key `layer`",
+            "the layer has no geometry",
+            file=name,
+            place=f"layer {layer!r}",
+            allowed="a layer of features",
+            mend="name a layer of features by the key `layer`",
         )
         return None
     if len(geometry) == 0:
         problems.error(
-            "the layer has no features", file=name, place=f"layer {layer!r}",
+            "the layer has no features",
+            file=name,
+            place=f"layer {layer!r}",
             allowed="at least one feature",
         )
         return None
@@ -220,8 +243,12 @@ def geometries(table: RawTable, kinds: tuple[str, ...], problems: Problems) -> l
         taken.append(shape if fault is None else None)
     for (message, found), rows in wrong.items():
         problems.error(
-            message, file=table.file, place=table.place(rows[0]), value=found,
-            allowed=" or ".join(kinds), mend="mend or delete the feature in a GIS",
+            message,
+            file=table.file,
+            place=table.place(rows[0]),
+            value=found,
+            allowed=" or ".join(kinds),
+            mend="mend or delete the feature in a GIS",
             count=len(rows),
         )
     return taken

@@ -24,7 +24,9 @@ def layer_crs(table: RawTable, problems: Problems) -> Any:
 
     if not table.crs:
         problems.error(
-            "the layer states no coordinate system (CRS)", file=table.file, place=table.place(),
+            "the layer states no coordinate system (CRS)",
+            file=table.file,
+            place=table.place(),
             allowed="any CRS, stated in the file (a Shapefile has it in its .prj)",
             mend="assign the CRS in a GIS",
         )
@@ -34,8 +36,11 @@ def layer_crs(table: RawTable, problems: Problems) -> Any:
         return crs.to_2d()
     except CRSError:
         problems.error(
-            "the coordinate system (CRS) of the layer is not known", file=table.file,
-            place=table.place(), value=table.crs, allowed="a CRS that PROJ knows",
+            "the coordinate system (CRS) of the layer is not known",
+            file=table.file,
+            place=table.place(),
+            value=table.crs,
+            allowed="a CRS that PROJ knows",
             mend="assign the CRS in a GIS",
         )
         return None
@@ -49,30 +54,48 @@ def given_crs(text: str, problems: Problems, *, file: str, place: str) -> Any:
     about = {"file": file, "place": place, "value": text}
     allowed = 'a projected CRS in metres, as "EPSG:32613"'
     if _CODE.fullmatch(text.strip()) is None:
-        problems.error("study.crs: not the code of a coordinate system", allowed=allowed,
-                       mend="write the authority and the code", **about)  # fmt: skip
+        problems.error(
+            "study.crs: not the code of a coordinate system",
+            allowed=allowed,
+            mend="write the authority and the code",
+            **about,
+        )
         return None
     try:
         crs = pyproj.CRS.from_user_input(text.strip().upper())
     except CRSError:
-        problems.error("study.crs: no coordinate system has this code", allowed=allowed,
-                       mend="look the code up", **about)  # fmt: skip
+        problems.error(
+            "study.crs: no coordinate system has this code",
+            allowed=allowed,
+            mend="look the code up",
+            **about,
+        )
         return None
     if not crs.is_projected:
-        problems.error("study.crs: a geographic CRS where metres are needed", allowed=allowed,
-                       mend="take the UTM zone, or leave the key out", **about)  # fmt: skip
+        problems.error(
+            "study.crs: a geographic CRS where metres are needed",
+            allowed=allowed,
+            mend="take the UTM zone, or leave the key out",
+            **about,
+        )
         return None
     axes = crs.axis_info[:2]
     if any(abs(axis.unit_conversion_factor - 1.0) > 1e-12 for axis in axes):
         problems.error(
-            f"study.crs: a CRS in {axes[0].unit_name} where metres are needed", allowed=allowed,
+            f"study.crs: a CRS in {axes[0].unit_name} where metres are needed",
+            allowed=allowed,
             mend="take the metric CRS of the same zone, or leave the key out; layers may stay "
-            "in feet, they are converted", **about,
-        )  # fmt: skip
+            "in feet, they are converted",
+            **about,
+        )
         return None
     if {axis.direction.lower() for axis in axes} != {"east", "north"}:
-        problems.error("study.crs: its axes do not point east and north", allowed=allowed,
-                       mend="take the UTM zone, or leave the key out", **about)  # fmt: skip
+        problems.error(
+            "study.crs: its axes do not point east and north",
+            allowed=allowed,
+            mend="take the UTM zone, or leave the key out",
+            **about,
+        )
         return None
     return crs
 
@@ -111,13 +134,19 @@ def check_distortion(
     name = crs.to_string()
     if not abs(scale - 1.0) <= _MOST_SCALE_ERROR:
         problems.error(
-            f"study.crs: at the roads a metre of this CRS is {1 / scale:.3f} m", file=file,
-            place=place, value=name, allowed="within 1 %",
+            f"study.crs: at the roads a metre of this CRS is {1 / scale:.3f} m",
+            file=file,
+            place=place,
+            value=name,
+            allowed="within 1 %",
             mend="take the UTM zone of the roads, or leave the key out",
         )
     elif abs(factors.meridian_convergence) > _MOST_CONVERGENCE:
         problems.caution(
             f"study.crs: at the roads its north is {factors.meridian_convergence:.1f} deg from "
-            "true north, from which wind directions count", file=file, place=place, value=name,
+            "true north, from which wind directions count",
+            file=file,
+            place=place,
+            value=name,
             mend="take the UTM zone of the roads, or leave the key out",
         )

@@ -132,7 +132,9 @@ def read_csv(path: Path, name: str, problems: Problems) -> RawTable | None:
         return None
     if not lines:
         problems.error(
-            "the table has a header and no rows", file=name, allowed="at least one row",
+            "the table has a header and no rows",
+            file=name,
+            allowed="at least one row",
             mend="look whether the file was copied whole",
         )
         return None
@@ -160,21 +162,32 @@ def _header_fits(header: list[str], name: str, line: int, problems: Problems) ->
     for mark, called in ((";", "semicolons"), ("\t", "tabs"), ("|", "bars")):
         if len(header) == 1 and mark in header[0]:
             problems.error(
-                f"the cells are parted by {called}", file=name, place=place, value=header[0],
-                allowed="commas", mend="save the table with commas (and points in its decimals)",
+                f"the cells are parted by {called}",
+                file=name,
+                place=place,
+                value=header[0],
+                allowed="commas",
+                mend="save the table with commas (and points in its decimals)",
             )
             return False
     if len(header) > MOST_COLUMNS:
         problems.error(
-            "too many columns", file=name, place=place, value=f"{len(header)}",
+            "too many columns",
+            file=name,
+            place=place,
+            value=f"{len(header)}",
             allowed=f"at most {MOST_COLUMNS}",
         )
         return False
     twice = sorted({each for each in header if each and header.count(each) > 1})
     if twice:
         problems.error(
-            "a header stands twice", file=name, place=place, value=", ".join(twice),
-            allowed="each header once", mend="rename or delete one of the columns",
+            "a header stands twice",
+            file=name,
+            place=place,
+            value=", ".join(twice),
+            allowed="each header once",
+            mend="rename or delete one of the columns",
         )
         return False
     return True
@@ -194,6 +207,8 @@ def near_header(name: str, table: RawTable) -> str:
 
 def as_text(cell: Any) -> str:
     """Write a cell as text: an id may come from a layer as a number; None is empty."""
+    if isinstance(cell, str):
+        return cell.strip()
     if cell is None or (isinstance(cell, float | np.floating) and np.isnan(cell)):
         return ""
     if isinstance(cell, float | np.floating) and float(cell).is_integer():

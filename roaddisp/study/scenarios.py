@@ -11,7 +11,7 @@ from typing import Any
 from pydantic import BaseModel, ValidationError
 
 from roaddisp.study.problems import Problems, listed, nearest
-from roaddisp.study.schema import ALTERNATIVES, NEEDED, SECTIONS, Section
+from roaddisp.study.schema import ALTERNATIVES, AT_LEAST_ONE, NEEDED, SECTIONS, Section
 from roaddisp.study.toml_places import KeyPath, TomlPlaces
 
 BASE = "base"
@@ -83,22 +83,33 @@ def read_settings(
     scenarios = document.get("scenario", {})
     if not isinstance(scenarios, dict):
         problems.error(
-            "scenario is not a table", file=file, place=places.place(("scenario",)),
-            value=scenarios, allowed="[scenario.<name>]", mend="give each scenario a name",
+            "scenario is not a table",
+            file=file,
+            place=places.place(("scenario",)),
+            value=scenarios,
+            allowed="[scenario.<name>]",
+            mend="give each scenario a name",
         )
         return settings
     for name, overrides in scenarios.items():
         place = places.place(("scenario", name))
         if name == BASE or not name.strip():
             problems.error(
-                "the name of this scenario is taken", file=file, place=place, value=name,
+                "the name of this scenario is taken",
+                file=file,
+                place=place,
+                value=name,
                 allowed="any other name: the keys outside [scenario] are the scenario 'base'",
                 mend="rename the scenario",
             )
         elif not isinstance(overrides, dict):
             problems.error(
-                "a scenario is not a table", file=file, place=place, value=overrides,
-                allowed=f"[scenario.{name}] and keys below it", mend="write it as a table",
+                "a scenario is not a table",
+                file=file,
+                place=place,
+                value=overrides,
+                allowed=f"[scenario.{name}] and keys below it",
+                mend="write it as a table",
             )
         else:
             _refuse_own_crs(name, overrides, places, file, problems)
@@ -114,9 +125,12 @@ def _refuse_own_crs(
     for key in ("crs", "timezone"):
         if isinstance(study, dict) and key in study:
             problems.error(
-                f"study.{key}: the same in every scenario", file=file,
-                place=places.place(("scenario", name, "study", key)), value=study[key],
-                allowed=f"one {key}, in [study]", mend="take it out of the scenario",
+                f"study.{key}: the same in every scenario",
+                file=file,
+                place=places.place(("scenario", name, "study", key)),
+                value=study[key],
+                allowed=f"one {key}, in [study]",
+                mend="take it out of the scenario",
             )
 
 
@@ -147,7 +161,10 @@ def _checked(
         if key not in SECTIONS:
             near = nearest(key, SECTIONS)
             problems.error(
-                "an unknown table", file=file, place=_place(places, name, (key,)), value=key,
+                "an unknown table",
+                file=file,
+                place=_place(places, name, (key,)),
+                value=key,
                 allowed=listed([*SECTIONS, "scenario"]),
                 mend=f"did you mean {near!r}?" if near else "remove it",
             )
@@ -156,7 +173,9 @@ def _checked(
     for key, model in SECTIONS.items():
         if key not in raw and key in NEEDED:
             problems.error(
-                f"the table [{key}] is missing", file=file, allowed=f"[{key}] with its keys",
+                f"the table [{key}] is missing",
+                file=file,
+                allowed=f"[{key}] with its keys",
                 mend="add it; `roaddisp inputs` describes it",
             )
             sections[key] = None
@@ -192,8 +211,9 @@ class _Checker:
                 for path, fault in faults.items():
                     if fault["type"] != "missing" or path not in dropped:
                         self._report(path, fault)
-                if any(fault["type"] == "missing" and len(path) == 1
-                       for path, fault in faults.items()):  # fmt: skip
+                if any(
+                    fault["type"] == "missing" and len(path) == 1 for path, fault in faults.items()
+                ):
                     return None
                 for path in faults:
                     _drop(usable, path, dropped)
@@ -204,14 +224,22 @@ class _Checker:
     def _alternatives(self, section: Section, raw: Mapping[str, Any]) -> Section | None:
         pair = ALTERNATIVES.get(self.key)
         if pair is None:
-            return section
+            some = AT_LEAST_ONE.get(self.key)
+            if some is None or any(key in raw for key in some):
+                return section
+            words = listed(repr(key) for key in some)
+            self._error((), f"none of {words} is given", "", f"at least one of {words}", "add one")
+            return None
         given = [key for key in pair if key in raw]
         if len(given) == 1:
             return section if getattr(section, given[0]) is not None else None
         said = "both" if given else "neither"
         self._error(
-            (given[-1],) if given else (), f"{said} of {pair[0]!r} and {pair[1]!r} given",
-            "", f"{pair[0]!r} or {pair[1]!r}", "keep one" if given else "add one",
+            (given[-1],) if given else (),
+            f"{said} of {pair[0]!r} and {pair[1]!r} given",
+            "",
+            f"{pair[0]!r} or {pair[1]!r}",
+            "keep one" if given else "add one",
         )
         return None
 
@@ -220,8 +248,12 @@ class _Checker:
         place = _place(self.places, self.scenario, full)
         where = ".".join(str(part) for part in full)
         self.problems.error(
-            f"{where}: {message}", file=self.file, place=place,
-            value=value if isinstance(value, str) else _toml(value), allowed=allowed, mend=mend,
+            f"{where}: {message}",
+            file=self.file,
+            place=place,
+            value=value if isinstance(value, str) else _toml(value),
+            allowed=allowed,
+            mend=mend,
         )
 
     def _report(self, loc: KeyPath, fault: Any) -> None:
@@ -239,14 +271,19 @@ class _Checker:
             self._error(loc, context["fault"], fault["input"], context["allowed"], context["mend"])
         else:
             message = {
-                "string_type": "not a text", "bool_type": "not true or false",
-                "int_type": "not a whole number", "list_type": "not a list",
-                "dict_type": "not a table", "model_type": "not a table",
-            }.get(kind, str(fault["msg"]).lower())  # fmt: skip
+                "string_type": "not a text",
+                "bool_type": "not true or false",
+                "int_type": "not a whole number",
+                "list_type": "not a list",
+                "dict_type": "not a table",
+                "model_type": "not a table",
+            }.get(kind, str(fault["msg"]).lower())
             expects = {
-                "string_type": 'a text in quotation marks', "bool_type": "true, false",
-                "int_type": "a whole number", "list_type": "a list in square brackets",
-            }.get(kind, "")  # fmt: skip
+                "string_type": "a text in quotation marks",
+                "bool_type": "true, false",
+                "int_type": "a whole number",
+                "list_type": "a list in square brackets",
+            }.get(kind, "")
             self._error(loc, message, fault["input"], allowed or expects, "correct the value")
 
 
@@ -262,10 +299,14 @@ def _key_path(loc: tuple[Any, ...], raw: Any) -> KeyPath:
         elif isinstance(node, list) and isinstance(part, int) and part < len(node):
             path.append(part)
             node = node[part]
-        elif isinstance(node, dict) and last and "[" not in str(part):
-            if part not in {"str", "dict", "list", "constrained-int"}:
-                path.append(part)
+        elif isinstance(node, dict) and last and not _is_branch(part):
+            path.append(part)
     return tuple(path)
+
+
+def _is_branch(part: object) -> bool:
+    """Whether a part of a location is pydantic's name of a union's branch."""
+    return "[" in str(part) or part in {"str", "dict", "list", "constrained-int"}
 
 
 def _one_each(faults: Sequence[Any], raw: dict[str, Any]) -> dict[KeyPath, Any]:

@@ -135,7 +135,8 @@ class FileSection(Section):
     )
     clock: TimeBase = _key(
         "clock of the times in the file: local civil clock, local standard time or UTC; not used "
-        "where times carry an offset", "local"
+        "where times carry an offset",
+        "local",
     )
     hour_ending: bool = _key("whether times name the end of their hour", False)
 
@@ -149,12 +150,14 @@ class StudySection(Section):
         "surroundings, which choose the spread curves and the wind profile", "open"
     )
     crs: str | None = _key(
-        "coordinate system of the calculation", None,
+        "coordinate system of the calculation",
+        None,
         allowed='projected, in metres, as "EPSG:32613"; the UTM zone of the roads where left out',
     )
     reference: Reference = _key(
         "state at which ppb and ug/m3 are exchanged in the *_ugm3 columns (1.8804 or 1.9125 ug/m3 "
-        "per ppb of NO2)", "25 C"
+        "per ppb of NO2)",
+        "25 C",
     )
 
 
@@ -166,11 +169,14 @@ class RoadsSection(FileSection):
 
 
 class TrafficSection(FileSection):
-    """Traffic by hour: profiles beside each link's AADT, or hourly counts."""
+    """Traffic by hour: profiles beside each link's AADT, hourly counts, or both.
+
+    A link that has counts takes them, and its AADT is not used.
+    """
 
     columns: Columns = _key("your column names", {}, allowed=f"{{ {_PER_FILE} }}")
-    profiles: str | None = _key("profiles; this or counts", None, allowed="a CSV")
-    counts: str | None = _key("hourly counts; this or profiles", None, allowed="a CSV")
+    profiles: str | None = _key("profiles; this, counts or both", None, allowed="a CSV")
+    counts: str | None = _key("hourly counts; this, profiles or both", None, allowed="a CSV")
     counts_format: Annotated[str, AfterValidator(Choice(("table",), ("tmg-volume",)))] = _key(
         "form of the counts", "table"
     )
@@ -182,7 +188,8 @@ class FleetSection(FileSection):
 
     columns: Columns = _key("your column names", {}, allowed=f"{{ {_PER_FILE} }}")
     mix: str | None = _key(
-        "fleets; without one, heavy_share is articulated trucks and the rest are cars", None,
+        "fleets; without one, heavy_share is articulated trucks and the rest are cars",
+        None,
         allowed="a CSV",
     )
     factors: str = _key("emission factors", allowed='a CSV, or "built-in": for screening')
@@ -204,7 +211,8 @@ class WeatherSection(FileSection):
     )
     wind_height: Annotated[str, AfterValidator(Choice(("release", "station")))] = _key(
         "height of the wind that the plume feels: of its release (not below 2 m) by the power "
-        "law, or of the station", "release"
+        "law, or of the station",
+        "release",
     )
     wind_floor: Annotated[float, BeforeValidator(Measure("speed", 0.1, 5.0))] = _key(
         "least wind at the plume", "1 m/s"
@@ -233,7 +241,8 @@ class AirSection(FileSection):
 
     file: str | None = _key("air; this or constant", None, allowed="a CSV")
     constant: ConstantAir | None = _key(
-        "the same in every hour; this or file", None,
+        "the same in every hour; this or file",
+        None,
         allowed='{ o3 = "30 ppb", no2 = "12 ppb" }, with no or nox where known',
     )
     format: Annotated[str, AfterValidator(Choice(("table",), ("aqs-hourly", "eea")))] = _key(
@@ -274,7 +283,8 @@ class ReceptorsSection(FileSection):
         "grid of receptors inside a site", "20 m"
     )
     format: Annotated[str, AfterValidator(Choice(("vector", "table")))] | None = _key(
-        "form of the points: a vector layer or a CSV", None,
+        "form of the points: a vector layer or a CSV",
+        None,
         allowed='"vector" | "table"; by the ending of the file if left out',
     )
 
@@ -284,10 +294,12 @@ class ConversionSection(Section):
 
     method: Annotated[
         str,
-        AfterValidator(Choice(
-            ("ozone-limited",), ("reaction-limited", "ambient-ratio", "steady-state", "full")
-        )),
-    ] = _key("how road NO becomes NO2", "ozone-limited")  # fmt: skip
+        AfterValidator(
+            Choice(
+                ("ozone-limited",), ("reaction-limited", "ambient-ratio", "steady-state", "full")
+            )
+        ),
+    ] = _key("how road NO becomes NO2", "ozone-limited")
 
 
 class DispersionSection(Section):
@@ -307,8 +319,9 @@ class DispersionSection(Section):
 class StandardsSection(Section):
     """What the results are held against."""
 
-    use: list[str] = _key("standards to judge by", [], allowed="names that are listed by "
-                          "`roaddisp standards`")  # fmt: skip
+    use: list[str] = _key(
+        "standards to judge by", [], allowed="names that are listed by `roaddisp standards`"
+    )
 
 
 class OutputsSection(Section):
@@ -336,8 +349,11 @@ SECTIONS: dict[str, type[Section]] = {
 
 NEEDED = ("study", "roads", "traffic", "fleet", "weather", "air", "receptors")
 
-ALTERNATIVES: dict[str, tuple[str, str]] = {
-    "traffic": ("profiles", "counts"),
-    "air": ("file", "constant"),
-}
+ALTERNATIVES: dict[str, tuple[str, str]] = {"air": ("file", "constant")}
 """Pairs of keys of which a section has exactly one."""
+
+AT_LEAST_ONE: dict[str, tuple[str, ...]] = {
+    "traffic": ("profiles", "counts"),
+    "receptors": ("points", "sites", "grid"),
+}
+"""Keys of which a section has at least one."""

@@ -10,7 +10,7 @@ from __future__ import annotations
 import re
 from collections.abc import Hashable, Sequence
 from dataclasses import dataclass
-from datetime import datetime, timedelta, timezone, tzinfo
+from datetime import UTC, datetime, timedelta, tzinfo
 from typing import Final
 from zoneinfo import ZoneInfo, ZoneInfoNotFoundError
 
@@ -26,7 +26,7 @@ _ISO = re.compile(
     r"(Z|[+-]\d{2}(?::?\d{2})?)?",
     re.ASCII,
 )
-_EPOCH = datetime(1970, 1, 1, tzinfo=timezone.utc)
+_EPOCH = datetime(1970, 1, 1, tzinfo=UTC)
 
 
 def find_zone(name: str) -> ZoneInfo | None:
@@ -69,17 +69,20 @@ class Fault:
 
 
 UNPARSED: Final = Fault(
-    "a time that cannot be read", "ISO 8601, as 2023-03-25T14:00 or 2023-03-25T14:00+01:00",
+    "a time that cannot be read",
+    "ISO 8601, as 2023-03-25T14:00 or 2023-03-25T14:00+01:00",
     "write year-month-day, T and the hour",
-)  # fmt: skip
+)
 NOT_WHOLE: Final = Fault(
-    "a time that is not on the whole hour", "minutes and seconds of zero",
+    "a time that is not on the whole hour",
+    "minutes and seconds of zero",
     "average the values to hours",
-)  # fmt: skip
+)
 SKIPPED: Final = Fault(
-    "a local time that does not exist: the clock skips it in spring", "a time the clock shows",
+    "a local time that does not exist: the clock skips it in spring",
+    "a time the clock shows",
     'write clock = "standard" or "utc" in study.toml where the file is in one of them',
-)  # fmt: skip
+)
 
 
 @dataclass(frozen=True)
@@ -123,7 +126,7 @@ def _offset_minutes(text: str) -> int:
     return -minutes if text[0] == "-" else minutes
 
 
-def _minutes(naive: datetime, zone: tzinfo = timezone.utc) -> int:
+def _minutes(naive: datetime, zone: tzinfo = UTC) -> int:
     return int((naive.replace(tzinfo=zone) - _EPOCH).total_seconds() // 60)
 
 
@@ -187,13 +190,15 @@ def to_utc(
     --------
     >>> berlin = ZoneInfo("Europe/Berlin")
     >>> autumn = ["2023-10-29T02:00", "2023-10-29T02:00"]
-    >>> to_utc(autumn, clock="local", hour_ending=False, zone=berlin).utc.tolist()
-    [28309440, 28309500]
+    >>> instants = to_utc(autumn, clock="local", hour_ending=False, zone=berlin)
+    >>> [str(hour) for hour in instants.utc.astype("datetime64[m]")]
+    ['2023-10-29T00:00', '2023-10-29T01:00']
     """
     stamps = {cell: parse_time(cell) for cell in dict.fromkeys(cells)}
     first = next((each for each in stamps.values() if isinstance(each, Stamp)), None)
     if first is None:
-        faults = [(row, UNPARSED) for row in range(len(cells))]
+        refused = {cell: each for cell, each in stamps.items() if isinstance(each, Fault)}
+        faults = [(row, refused[cell]) for row, cell in enumerate(cells)]
         return Instants(np.full(len(cells), NO_TIME), faults, 0)
     if offset is None:
         offset = standard_offset(zone, first.naive.year)

@@ -35,7 +35,7 @@ class TomlPlaces:
 
 
 def find_places(text: str) -> TomlPlaces:
-    """Find where each key of a TOML text stands.
+    r"""Find where each key of a TOML text stands.
 
     Parameters
     ----------
@@ -48,7 +48,7 @@ def find_places(text: str) -> TomlPlaces:
 
     Examples
     --------
-    >>> find_places('[roads]\\nfile = "a.gpkg"').place(("roads", "file"))
+    >>> find_places('[roads]\nfile = "a.gpkg"').place(("roads", "file"))
     'line 2, column 1'
     """
     import tree_sitter
@@ -75,8 +75,10 @@ def find_places(text: str) -> TomlPlaces:
             base, node = stack.pop()
             if node.type == "inline_table":
                 places.inline.add(base)
-                for pair in _named(node, "pair"):
-                    stack.append((mark_keys(base, pair.named_children[0]), pair.named_children[-1]))
+                stack.extend(
+                    (mark_keys(base, pair.named_children[0]), pair.named_children[-1])
+                    for pair in _named(node, "pair")
+                )
             elif node.type == "array":
                 items = [child for child in node.named_children if child.type != "comment"]
                 for number, child in enumerate(items):

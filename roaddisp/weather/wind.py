@@ -193,6 +193,35 @@ def weather_hours(
     A missing hour lacks the speed, the stability, or a direction at 1 m/s or
     more. Stability, where not given, comes from the measured wind before any
     floor and the sun at mid-hour (`turner_class`).
+
+    Examples
+    --------
+    >>> import numpy as np
+    >>> hours = np.array(["2024-05-14T00:00", "2024-05-14T01:00"], dtype="datetime64[m]")
+    >>> station = StationHours(
+    ...     wind_from=np.array([360.0, np.nan]),
+    ...     wind_speed=np.array([4.0, 0.2]),
+    ...     temperature=np.array([285.0, 284.0]),
+    ...     stability=None,
+    ...     cloud=np.array([0.0, 0.0]),
+    ...     ceiling=np.array([np.inf, np.inf]),
+    ...     mixing_height=np.array([np.inf, np.inf]),
+    ...     pressure=np.array([np.nan, np.nan]),
+    ...     latitude=50.0,
+    ...     longitude=0.0,
+    ... )
+    >>> weather = weather_hours(
+    ...     station,
+    ...     Clock(hours, hours, utc_offset=0.0, timezone="UTC"),
+    ...     terrain="open",
+    ...     anemometer_height=10.0,
+    ...     wind_height="release",
+    ...     wind_floor=1.0,
+    ...     calm_threshold=0.5,
+    ...     plume_heights=np.array([2.0]),
+    ... )
+    >>> weather.stability, weather.calm, weather.wind_speed.round(2)
+    (array([4, 5]), array([False,  True]), array([[2.28, 1.  ]]))
     """
     stability = _stability(station, clock.utc)
     calm = calm_hours(station.wind_speed, station.wind_from, calm_threshold=calm_threshold)
@@ -213,13 +242,14 @@ def weather_hours(
     )
     wind[:, calm] = CALM_PLUME_WIND
     wind[:, missing] = np.nan
-    raised = (before_floor < wind_floor).any(axis=0)
+    below_least = blowing & (station.wind_speed < LEAST_MEASURED_WIND)
+    below_floor = blowing & (before_floor < wind_floor).any(axis=0)
     counts = {
         "hours": len(calm),
         "missing": int(missing.sum()),
         "calm": int(calm.sum()),
-        "below_1_m_s": int((blowing & (station.wind_speed < LEAST_MEASURED_WIND)).sum()),
-        "raised_to_floor": int((blowing & raised).sum()),
+        "below_1_m_s": int(below_least.sum()),
+        "raised_to_floor": int(below_floor.sum()),
     } | {
         f"class_{letter}": int((~missing & (stability == code)).sum())
         for code, letter in enumerate(STABILITY_CLASSES)
@@ -231,6 +261,7 @@ def weather_hours(
         mixing_height=station.mixing_height,
         calm=calm,
         missing=missing,
+        raised=below_least | below_floor,
         counts=counts,
     )
 

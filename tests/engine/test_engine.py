@@ -68,6 +68,7 @@ def weather() -> WeatherHours:
         mixing_height=np.where(np.arange(HOURS) % 2 == 0, np.inf, 120.0),
         calm=calm,
         missing=missing,
+        raised=np.zeros(HOURS, dtype=bool),
         counts={},
     )
 

@@ -130,6 +130,8 @@ def _statistics(receptors: Receptors, years: int) -> Statistics:
         no2_1h_p98_ppb=p98 * growth,
         no2_1h_p98_truncated_ppb=np.floor(p98 * growth * 10) / 10,
         no2_1h_19th_ppb=(p98 - 6.0) * growth,
+        raised_in_p98=np.zeros((years, len(receptors))),
+        raised_in_19th=np.zeros((years, len(receptors))),
     )
 
 

@@ -26,6 +26,7 @@ from __future__ import annotations
 import csv
 import importlib.util
 import io
+import itertools
 import math
 import shutil
 import zipfile
@@ -121,7 +122,7 @@ def vertices_in_metres(streets: gpd.GeoDataFrame) -> list[FloatArray]:
 
 
 def length_m(line: FloatArray) -> float:
-    return math.fsum(math.dist(a, b) for a, b in zip(line[:-1], line[1:], strict=True))
+    return math.fsum(math.dist(a, b) for a, b in itertools.pairwise(line))
 
 
 def grams_per_metre(kind: StreetKind) -> tuple[float, float]:
@@ -178,92 +179,13 @@ def station_year() -> Station:
 
 
 def calm_and_missing(station: Station, threshold: float = 0.5) -> tuple[list[bool], list[bool]]:
-    """Calm: slower than the threshold, or without direction below 1 m/s; missing: without, above."""
+    """Calm: below the threshold, or no direction below 1 m/s; missing: none from 1 m/s on."""
     calm, missing = [], []
     for wind_from, speed in zip(station.wind_from, station.wind_speed, strict=True):
         undefined = wind_from == 0
         calm.append(speed < threshold or (undefined and speed < 1.0))
         missing.append(undefined and speed >= 1.0)
     return calm, missing
-
-
-# --- Turner's classes by another hand -------------------------------------------------
-
-TURNER_ROWS = (
-    # highest whole knots, class number for net radiation index 4, 3, 2, 1, 0, -1, -2
-    (1, (1, 1, 2, 3, 4, 6, 7)),
-    (3, (1, 2, 2, 3, 4, 6, 7)),
-    (5, (1, 2, 3, 4, 4, 5, 6)),
-    (6, (2, 2, 3, 4, 4, 5, 6)),
-    (7, (2, 2, 3, 4, 4, 4, 5)),
-    (9, (2, 3, 3, 4, 4, 4, 5)),
-    (10, (3, 3, 4, 4, 4, 4, 5)),
-    (11, (3, 3, 4, 4, 4, 4, 4)),
-    (math.inf, (3, 4, 4, 4, 4, 4, 4)),
-)
-"""Turner 1964, J. Appl. Meteorol. 3, 83-91, as EPA-454/R-99-005 Table 6-4 prints it."""
-
-
-def turner(
-    speed: float, tenths: float, ceiling: float, sun: float, sun_before: float, sun_after: float
-) -> str:
-    """Class letter (G as F) from elevations [deg] at mid-hour, an hour before and after.
-
-    Tables 6-4 to 6-6 of EPA-454/R-99-005; from memory: that cloud of 10/10 at or
-    above 7,000 ft takes one more off, and that the index by day is at least 1.
-    """
-    feet = ceiling / 0.3048
-    if tenths == 10 and feet < 7000:
-        index = 0
-    elif min(sun, sun_before, sun_after) <= 0:
-        index = -2 if tenths <= 4 else -1
-    else:
-        index = 4 if sun > 60 else 3 if sun > 35 else 2 if sun > 15 else 1
-        if tenths > 5:
-            if feet < 7000:
-                index -= 2
-            elif feet < 16000:
-                index -= 1
-            if tenths == 10 and feet >= 7000:
-                index -= 1
-        index = max(index, 1)
-    knots = math.floor(speed * 3600 / 1852 + 0.5)
-    numbers = next(numbers for highest, numbers in TURNER_ROWS if knots <= highest)
-    return "ABCDEFF"[numbers[4 - index] - 1]
-
-
-def sun_elevation(station: Station, latitude: float, longitude: float) -> FloatArray:
-    """(3, T) [deg] by pvlib (NREL's algorithm, no refraction), an hour before, at, after mid-hour."""
-    import pandas as pd
-    from pvlib.solarposition import get_solarposition
-
-    middle = pd.DatetimeIndex(station.start) + pd.Timedelta(minutes=30)
-    utc = middle.tz_localize("UTC") - pd.Timedelta(hours=UTC_OFFSET)
-    return np.stack(
-        [
-            get_solarposition(utc + pd.Timedelta(hours=shift), latitude, longitude)[
-                "elevation"
-            ].to_numpy()
-            for shift in (-1, 0, 1)
-        ]
-    )
-
-
-def classes(station: Station, sun: FloatArray, *, shift: float = 0.0) -> list[str]:
-    """(T,) letters, with every elevation moved by `shift` degrees."""
-    before, middle, after = sun + shift
-    return [
-        turner(*hour)
-        for hour in zip(
-            station.wind_speed,
-            station.opaque_tenths,
-            station.ceiling_m,
-            middle,
-            before,
-            after,
-            strict=True,
-        )
-    ]
 
 
 # --- traffic by the hour -------------------------------------------------------------
@@ -415,7 +337,7 @@ def write_profile(folder: Path, profile: Profile) -> None:
 
 
 def write_weather(folder: Path, station: Station) -> None:
-    """Our CSV, hours named by their end as in the file, undefined directions and no ceiling empty."""
+    """Our CSV; hours are named by their end, undefined directions and no ceiling left empty."""
     rows = zip(
         [(start + timedelta(hours=1)).isoformat() for start in station.start],
         [value or "" for value in station.wind_from],

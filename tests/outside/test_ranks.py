@@ -29,6 +29,7 @@ def _statistics(no2: np.ndarray, start: str, calm: np.ndarray | None = None) -> 
         clock=Clock(hours, hours, utc_offset=0.0, timezone="UTC"),
         background=Background(np.full(no2.size, 30.0), np.zeros(no2.size), None),
         calm=np.zeros(no2.size, dtype=bool) if calm is None else calm,
+        raised=np.zeros(no2.size, dtype=bool),
         ugm3_per_ppb=1.8804,
     )
 
