@@ -91,7 +91,7 @@ def run(study: Study, *, scenario: str | None = None, progress: Progress | None 
     >>> folder.cleanup()
     """
     chosen = _scenario(study, scenario or "base")
-    say = progress or (lambda stage, done, total: None)
+    say = progress or (lambda *_: None)
     timer = _Timer()
 
     with timer.stage("traffic and emissions"):

@@ -62,7 +62,7 @@ def command(
 def _progress_bar() -> Iterator[Callable[[str, int, int], None]]:
     """Show a bar on stderr while the work lasts; nothing where that is no terminal."""
     if not sys.stderr.isatty():
-        yield lambda stage, done, total: None
+        yield lambda *_: None
         return
     from rich.console import Console
     from rich.progress import BarColumn, Progress, TaskID, TextColumn, TimeElapsedColumn

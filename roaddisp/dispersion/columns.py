@@ -95,7 +95,7 @@ STEEP_FROM: Final = f32(2.0)
 BASE, BASE_SHORT, SLOPE_SHORT = f32(2.3), f32(0.9), f32(1.75)
 
 # Clip of the line at t = c/sigma_y
-CUT: Final = f32(16.0)
+CUT: Final = f32(19.0)
 CUT_MOST: Final = f32(48.0)
 CUT_LEAST_MORE: Final = f32(8.0)
 NOTHING: Final = f32(40.0)

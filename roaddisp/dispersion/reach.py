@@ -185,7 +185,9 @@ def cut(
         two = c_rate * c_rate - wide * a_squared * d_rate * d_rate
         one = c_mid * c_rate - wide * a_squared * d_mid * d_rate
         none = c_mid * c_mid - wide * (sy0_squared + a_squared * d_mid * d_mid)
-        inside = one * one - two * none
+        # one^2 - two none, without its cancellation
+        offset = c * d_rate - d * c_rate
+        inside = wide * (a_squared * offset * offset + sy0_squared * two)
         root = np.sqrt(inside if inside > ZERO else ZERO)
         summed = -(one + root) if one >= ZERO else root - one
         summed = summed if summed != ZERO else TINY

@@ -9,6 +9,7 @@ from typing import Any
 from pydantic.fields import FieldInfo
 
 from roaddisp.quantities import INSIDE, UNITLESS, UNITS, spellings
+from roaddisp.study.keys import allowed_text, submodel
 from roaddisp.study.schema import NEEDED, SECTIONS, Section
 from roaddisp.study.table_types import Column, Table
 from roaddisp.study.tables import TABLES
@@ -36,29 +37,6 @@ def document_inputs() -> str:
         for key, table in tables.items():
             parts.append(_table(section_name, key, table))
     return "\n".join(parts)
-
-
-def allowed_text(field: FieldInfo) -> str:
-    """Say what a key may be."""
-    extra = field.json_schema_extra
-    if isinstance(extra, dict) and "allowed" in extra:
-        return str(extra["allowed"])
-    for part in _metadata(field):
-        allowed = getattr(getattr(part, "func", None), "allowed", None)
-        if allowed is not None:
-            return str(allowed)
-    if field.annotation is bool:
-        return "true, false"
-    if field.annotation is str:
-        return "a text"
-    return ""
-
-
-def _metadata(field: FieldInfo) -> list[Any]:
-    found = list(field.metadata)
-    for inner in getattr(field.annotation, "__args__", ()):
-        found.extend(getattr(inner, "__metadata__", ()))
-    return found
 
 
 def _opening() -> str:
@@ -100,8 +78,6 @@ def _section(name: str, section: type[Section]) -> str:
 
 
 def _inner(field: FieldInfo) -> list[str]:
-    from roaddisp.study.scenarios import submodel
-
     model = submodel(field.annotation)
     if model is None:
         return []

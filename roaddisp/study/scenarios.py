@@ -10,6 +10,7 @@ from typing import Any
 
 from pydantic import BaseModel, ValidationError
 
+from roaddisp.study.keys import allowed_text, submodel
 from roaddisp.study.problems import Problems, listed, nearest
 from roaddisp.study.schema import ALTERNATIVES, AT_LEAST_ONE, NEEDED, SECTIONS, Section
 from roaddisp.study.toml_places import KeyPath, TomlPlaces
@@ -343,20 +344,7 @@ def _model_at(model: type[BaseModel], path: KeyPath) -> type[BaseModel]:
     return model
 
 
-def submodel(annotation: Any) -> type[BaseModel] | None:
-    """Find the section model an annotation holds, bare or beside None."""
-    if isinstance(annotation, type) and issubclass(annotation, BaseModel):
-        return annotation
-    for inner in getattr(annotation, "__args__", ()):
-        found = submodel(inner)
-        if found is not None:
-            return found
-    return None
-
-
 def _field(model: type[BaseModel], loc: KeyPath) -> tuple[str, str]:
-    from roaddisp.study.document import allowed_text
-
     if not loc:
         return "", ""
     owner = _model_at(model, loc[:-1])

@@ -18,6 +18,7 @@ from __future__ import annotations
 
 import csv
 import math
+from itertools import pairwise
 from pathlib import Path
 
 import numpy as np
@@ -111,8 +112,7 @@ def line(offset: float, wind_from: float, letter: str, height: float, sigma_z0: 
         breaks.add(axis)
     cuts = sorted(cut for cut in breaks if 0.0 <= cut <= length)
     return sum(
-        quad(integrand, a, b, epsabs=1e-13, epsrel=1e-9, limit=100)[0]
-        for a, b in zip(cuts[:-1], cuts[1:], strict=True)
+        quad(integrand, a, b, epsabs=1e-13, epsrel=1e-9, limit=100)[0] for a, b in pairwise(cuts)
     )
 
 

@@ -291,48 +291,56 @@ def test_summary_is_of_the_hours(result):
 # --- the whole way, by brute force ----------------------------------------------------------
 
 
-def test_nox_of_single_hours_by_brute_force(result, streets, station, sun):
-    """One hour of each class at the seven schools off the street, within 1 %.
+OFF_THE_STREET = (0, 1, 2, 3, 4, 6, 7)
 
-    Each street is spread over its width and length as small point plumes.
-    Release height and first spread: light 1.3 m and 1.2 m, heavy 3.4 m and 3.2 m,
-    mixed by NOx (US EPA hot-spot guidance, Appendix J, from memory).
+
+def source(kind, vehicles_over_aadt: float) -> tuple[float, float, float]:
+    """NOx [g/m/s] of a street in one hour, its release height and first vertical spread [m].
+
+    Light 1.3 m and 1.2 m, heavy 3.4 m and 3.2 m, mixed by NOx (US EPA hot-spot
+    guidance, Appendix J, from memory).
     """
-    lines, kinds = streets
-    places = [
-        HAND.strip_points(line, kind.width_ft * 0.3048)
-        for line, kind in zip(lines, kinds, strict=True)
+    heavy = kind.heavy_percent / 100
+    car, truck = (REAL.FACTORS[name][kind.speed_mph][0] for name in ("car", "articulated_truck"))
+    by_trucks = heavy * truck / (heavy * truck + (1 - heavy) * car)
+    strength = REAL.grams_per_metre(kind)[0] * kind.aadt * vehicles_over_aadt / 3600
+    return strength, 1.3 + by_trucks * (3.4 - 1.3), 1.2 + by_trucks * (3.2 - 1.2)
+
+
+@pytest.fixture(scope="module")
+def places(streets):
+    """Each street spread over its width and length as small point sources."""
+    return [
+        HAND.strip_points(line, kind.width_ft * 0.3048) for line, kind in zip(*streets, strict=True)
     ]
-    letters = HAND.classes(station, sun)
+
+
+@pytest.fixture(scope="module")
+def letters(station, sun):
+    """Class of each hour; empty where the wind is calm or has no direction."""
     calm, missing = REAL.calm_and_missing(station)
+    hours = zip(HAND.classes(station, sun), calm, missing, strict=True)
+    return ["" if still or gone else letter for letter, still, gone in hours]
+
+
+@pytest.mark.parametrize("letter", "ABCDEF")
+def test_nox_of_single_hours_by_brute_force(result, streets, station, places, letters, letter):
+    """The busiest and another hour of each class, at the schools off the street, within 1 %.
+
+    1 % is what parallel lines may differ from the fully spread strip beside a
+    road; over a whole network of streets they come nearer.
+    """
     shape = REAL.traffic_shape(REAL.interstate_profile(), station.start)
     modelled = result.hourly["nox_road_ugm3"].to_numpy()
     schools = result.scenario.receptors.xyz[:, :2]
+    hours = [t for t in range(8_760) if letters[t] == letter]
     compared = 0
-    for letter in HAND.BRIGGS_OPEN:
-        hours = [t for t in range(8_760) if letters[t] == letter and not (calm[t] or missing[t])]
-        hour = hours[len(hours) // 3]
-        sources = []
-        for kind in kinds:
-            heavy = kind.heavy_percent / 100
-            car, truck = (
-                REAL.FACTORS[name][kind.speed_mph][0] for name in ("car", "articulated_truck")
-            )
-            truck_share = heavy * truck / (heavy * truck + (1 - heavy) * car)
-            strength = REAL.grams_per_metre(kind)[0] * kind.aadt * shape[hour] / 3600
-            sources.append(
-                (strength, 1.3 + truck_share * (3.4 - 1.3), 1.2 + truck_share * (3.2 - 1.2))
-            )
-        for school in (0, 1, 2, 3, 4, 6, 7):
-            expected = HAND.nox_by_points(
-                places,
-                sources,
-                schools[school],
-                station.wind_from[hour],
-                station.wind_speed[hour],
-                letter,
-            )
+    for hour in (max(hours, key=lambda t: shape[t]), hours[len(hours) // 3]):
+        sources = [source(kind, shape[hour]) for kind in streets[1]]
+        wind = (station.wind_from[hour], station.wind_speed[hour])
+        for school in OFF_THE_STREET:
+            expected = HAND.nox_by_points(places, sources, schools[school], *wind, letter)
             if expected > 0.01 * np.nanmax(modelled[school]):
-                assert modelled[school, hour] == pytest.approx(expected, rel=0.01), (letter, school)
+                assert modelled[school, hour] == pytest.approx(expected, rel=0.01), (hour, school)
                 compared += 1
-    assert compared >= 30
+    assert compared >= len(OFF_THE_STREET)
