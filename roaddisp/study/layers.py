@@ -206,7 +206,7 @@ def _read(path: Path, name: str, layer: str | None, problems: Problems) -> RawTa
         return None
     names = tuple(str(field) for field in meta["fields"])
     cells = tuple(_cells(values) for values in fields)
-    return RawTable(name, layer, names, cells, (), geometry, meta["crs"])
+    return RawTable(name, layer, names, cells, (), geometry=geometry, crs=meta["crs"])
 
 
 def _cells(values: Any) -> list[Any]:

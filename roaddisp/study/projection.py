@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import re
+from functools import lru_cache
 from typing import Any, Final
 
 import numpy as np
@@ -114,13 +115,17 @@ def utm_crs(longitude: float, latitude: float) -> Any:
 
 def moved(x: FloatArray, y: FloatArray, source: Any, target: Any) -> tuple[FloatArray, FloatArray]:
     """Bring coordinates from one system to another; infinite where that is impossible."""
-    import pyproj
-
     if source == target:
         return np.asarray(x, dtype=float), np.asarray(y, dtype=float)
-    way = pyproj.Transformer.from_crs(source, target, always_xy=True)
-    east, north = way.transform(np.asarray(x, dtype=float), np.asarray(y, dtype=float))
+    east, north = _way(source, target).transform(np.asarray(x, dtype=float), np.asarray(y, dtype=float))
     return np.asarray(east, dtype=float), np.asarray(north, dtype=float)
+
+
+@lru_cache(maxsize=16)
+def _way(source: Any, target: Any) -> Any:
+    import pyproj
+
+    return pyproj.Transformer.from_crs(source, target, always_xy=True)
 
 
 def check_distortion(

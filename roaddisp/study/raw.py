@@ -31,8 +31,9 @@ class RawTable:
     cells : tuple of sequences
         By column: text from a CSV (empty where missing); text, numbers or None
         from a layer.
-    lines : sequence of int
-        Line of each row in a CSV; empty for a layer.
+    lines, rows : sequence of int
+        Line and number, from 0, of each row in a CSV; empty for a layer. Rows that
+        could not be read are noted as problems and left out.
     geometry : object array of WKB, or None
     crs : str or None
     """
@@ -42,6 +43,7 @@ class RawTable:
     names: tuple[str, ...]
     cells: tuple[Sequence[Any], ...]
     lines: Sequence[int]
+    rows: Sequence[int] = ()
     geometry: Any = None
     crs: str | None = None
 
@@ -61,7 +63,7 @@ class RawTable:
         if row is not None and self.is_layer:
             parts.append(f"feature {row + 1}")
         elif row is not None:
-            parts.append(f"row {row + 1}")
+            parts.append(f"row {self.rows[row] + 1}")
             parts.append(f"line {self.lines[row]}")
         if column:
             parts.append(f"column {column!r}")
@@ -91,6 +93,7 @@ def read_csv(path: Path, name: str, problems: Problems) -> RawTable | None:
     reader = csv.reader(io.StringIO(body, newline=""), strict=True)
     columns: list[list[str]] = []
     lines: list[int] = []
+    rows: list[int] = []
     ragged: list[tuple[int, int, int]] = []
     header: list[str] = []
     known: dict[str, str] = {}
@@ -106,6 +109,7 @@ def read_csv(path: Path, name: str, problems: Problems) -> RawTable | None:
             if len(cells) != len(header):
                 ragged.append((len(lines) + len(ragged), line, len(cells)))
                 continue
+            rows.append(len(lines) + len(ragged))
             lines.append(line)
             for column, cell in zip(columns, cells, strict=True):
                 column.append(known.setdefault(cell, cell))
@@ -129,7 +133,8 @@ def read_csv(path: Path, name: str, problems: Problems) -> RawTable | None:
             mend="look for a missing or a decimal comma, or whether the file is cut short",
             count=len(ragged),
         )
-        return None
+        if not lines:
+            return None
     if not lines:
         problems.error(
             "the table has a header and no rows",
@@ -138,7 +143,7 @@ def read_csv(path: Path, name: str, problems: Problems) -> RawTable | None:
             mend="look whether the file was copied whole",
         )
         return None
-    return RawTable(name, "", tuple(header), tuple(columns), lines)
+    return RawTable(name, "", tuple(header), tuple(columns), lines, rows)
 
 
 def _skip_notes(text: str) -> tuple[int, str]:

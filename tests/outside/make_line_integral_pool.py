@@ -9,6 +9,7 @@ as reprinted by Gifford 1976) and the integrand are written out again here.
 from __future__ import annotations
 
 import csv
+import itertools
 import math
 from pathlib import Path
 
@@ -21,8 +22,12 @@ KINDS = ("anywhere", "axis", "inside", "beyond", "parallel", "roadside")
 PER_KIND = 80
 
 CROSSWIND = {
-    "open": {k: (a, 1e-4) for k, a in zip("ABCDEF", (0.22, 0.16, 0.11, 0.08, 0.06, 0.04))},
-    "urban": {k: (a, 4e-4) for k, a in zip("ABCDEF", (0.32, 0.32, 0.22, 0.16, 0.11, 0.11))},
+    "open": {
+        k: (a, 1e-4) for k, a in zip("ABCDEF", (0.22, 0.16, 0.11, 0.08, 0.06, 0.04), strict=False)
+    },
+    "urban": {
+        k: (a, 4e-4) for k, a in zip("ABCDEF", (0.32, 0.32, 0.22, 0.16, 0.11, 0.11), strict=False)
+    },
 }
 VERTICAL = {
     "open": {
@@ -100,7 +105,7 @@ def line_integral(case):
         breaks |= {(10.0**p - d0) / dd for p in np.arange(-6.0, 4.01, 0.2)}
     inner = sorted(p for p in breaks if 0.0 <= p <= length)
     total = 0.0
-    for lo, hi in zip(inner[:-1], inner[1:], strict=True):
+    for lo, hi in itertools.pairwise(inner):
         total += quad(integrand, lo, hi, epsabs=1e-16, epsrel=1e-11, limit=200)[0]
     return total
 
