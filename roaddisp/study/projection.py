@@ -117,7 +117,9 @@ def moved(x: FloatArray, y: FloatArray, source: Any, target: Any) -> tuple[Float
     """Bring coordinates from one system to another; infinite where that is impossible."""
     if source == target:
         return np.asarray(x, dtype=float), np.asarray(y, dtype=float)
-    east, north = _way(source, target).transform(np.asarray(x, dtype=float), np.asarray(y, dtype=float))
+    east, north = _way(source, target).transform(
+        np.asarray(x, dtype=float), np.asarray(y, dtype=float)
+    )
     return np.asarray(east, dtype=float), np.asarray(north, dtype=float)
 
 

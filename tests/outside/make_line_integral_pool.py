@@ -22,13 +22,10 @@ KINDS = ("anywhere", "axis", "inside", "beyond", "parallel", "roadside")
 PER_KIND = 80
 
 CROSSWIND = {
-    "open": {
-        k: (a, 1e-4) for k, a in zip("ABCDEF", (0.22, 0.16, 0.11, 0.08, 0.06, 0.04), strict=False)
-    },
-    "urban": {
-        k: (a, 4e-4) for k, a in zip("ABCDEF", (0.32, 0.32, 0.22, 0.16, 0.11, 0.11), strict=False)
-    },
+    "open": {"A": 0.22, "B": 0.16, "C": 0.11, "D": 0.08, "E": 0.06, "F": 0.04},
+    "urban": {"A": 0.32, "B": 0.32, "C": 0.22, "D": 0.16, "E": 0.11, "F": 0.11},
 }
+BEND = {"open": 1e-4, "urban": 4e-4}
 VERTICAL = {
     "open": {
         "A": lambda x: 0.20 * x,
@@ -74,7 +71,7 @@ def line_integral(case):
     along = (end - start) / length
     d0, c0 = float((receptor - start) @ down), float((receptor - start) @ side)
     dd, dc = float(-along @ down), float(-along @ side)
-    a, b = CROSSWIND[case["terrain"]][case["stability"]]
+    a, b = CROSSWIND[case["terrain"]][case["stability"]], BEND[case["terrain"]]
     rise = VERTICAL[case["terrain"]][case["stability"]]
     sy0, sz0 = case["sigma_y0"], case["sigma_z0"]
     if case["z"] > case["lid"] or case["height"] > case["lid"]:
