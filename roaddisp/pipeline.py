@@ -202,7 +202,14 @@ def _fold(
     say(stage, 0, total)
     with timer.stage("responses and hours"):
         blocks = hours(
-            responses(segments, strengths, scenario.receptors, states, terrain=options.terrain),
+            responses(
+                segments,
+                strengths,
+                scenario.receptors,
+                states,
+                terrain=options.terrain,
+                calms_at=_calms_at(scenario),
+            ),
             strengths,
             weather,
             scenario.background,
@@ -213,8 +220,11 @@ def _fold(
                 filled = block if block.worst is None else _with_calms(block)
                 plain = filled if options.calms == "worst-direction" else block
                 regulatory.append(_statistics(scenario, weather, plain))
-                if options.calms == "both" and block.worst is not None:
-                    worst.append(_statistics(scenario, weather, filled))
+                if options.calms == "both":
+                    unchanged = block.worst is None
+                    worst.append(
+                        regulatory[-1] if unchanged else _statistics(scenario, weather, filled)
+                    )
                 hourly.append(_rows(plain, kept))
             say(stage, block.receptors.stop, total)
     return (
@@ -234,6 +244,16 @@ def _statistics(scenario: Scenario, weather: WeatherHours, block: HourlyBlock) -
         raised=weather.raised,
         ugm3_per_ppb=scenario.options.ugm3_per_ppb,
     )
+
+
+def _calms_at(scenario: Scenario) -> BoolArray:
+    """Receptors whose calm hours are run: all, or those that some standard judges."""
+    receptors = scenario.receptors
+    if scenario.options.calms == "worst-direction":
+        return np.ones(len(receptors), dtype=np.bool_)
+    rules = [standard(name) for name in scenario.options.standards]
+    judged = [any(rule.judges(kind) for rule in rules) for kind in receptors.kind]
+    return np.array(judged, dtype=np.bool_) & ~receptors.on_road
 
 
 def _with_calms(block: HourlyBlock) -> HourlyBlock:

@@ -161,7 +161,7 @@ def windowed_table(
         ``[near, far)``.
     across_only : bool
         ``sigma_y0`` is a spread across the segment alone, so that the plume gets
-        its component across the wind, ``sigma_y0 |sin(angle of wind and segment)|``.
+        its component across the wind, ``sigma_y0 |cos(angle of wind and segment)|``.
         For roads of real width: otherwise a road's ends are blurred along it.
 
     Returns

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 from roaddisp.model.types import BoolArray, Float32Array, FloatArray, IntArray
 
@@ -124,6 +124,18 @@ class WeatherStates:
 
     def __len__(self) -> int:
         return len(self.wind_from)
+
+    def without_calms(self) -> WeatherStates:
+        """Return the states of ordinary hours alone."""
+        ordinary = int(self.of_hour.max(initial=-1)) + 1
+        return replace(
+            self,
+            wind_from=self.wind_from[:ordinary],
+            stability=self.stability[:ordinary],
+            mixing_height=self.mixing_height[:ordinary],
+            calm_hours=self.calm_hours[:0],
+            calm_first=self.calm_first[:0],
+        )
 
 
 @dataclass(frozen=True)

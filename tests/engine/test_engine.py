@@ -109,10 +109,16 @@ def plain_hour(
     wind_speed: np.ndarray,
     weather: WeatherHours,
 ) -> np.ndarray:
-    """Sum the links of one hour by the reference integral: (K, R) [ug/m3]."""
+    """Sum the links of one hour by the reference integral: (K, R) [ug/m3].
+
+    A strip's spread lies across its line; the plume gets its part across the wind.
+    """
     total = np.zeros((2, len(receptors)))
     for link in range(2):
         group = strengths.group[link]
+        along = np.diff(segments.ends[link], axis=0)[0]
+        downwind = -np.array([np.sin(np.radians(wind_from)), np.cos(np.radians(wind_from))])
+        across = abs(along @ downwind) / np.hypot(*along)
         seen = unit_concentration(
             receptors.xyz,
             segments.ends[link : link + 1],
@@ -121,7 +127,7 @@ def plain_hour(
             stability=STABILITY_CLASSES[weather.stability[hour]],
             height=strengths.release_height[link],
             sigma_z0=strengths.sigma_z0[link],
-            sigma_y0=segments.sigma_y0[link],
+            sigma_y0=segments.sigma_y0[link] * across,
             mixing_height=weather.mixing_height[hour],
         )[:, 0]
         strength = strengths.amplitude[:, link] * strengths.shape[:, group, hour]
