@@ -381,7 +381,8 @@ class Assembly:
     def _caution_places(
         self, settings: Settings, network: Network, receptors: Receptors, weather: Weather
     ) -> None:
-        about = {"file": settings.file, "place": settings.place("receptors")}
+        place = f"{settings.place('receptors')}, scenario {settings.name}"
+        about = {"file": settings.file, "place": place}
         lid = float(np.min(weather.hours["mixing_height"]))
         caution_receptors(receptors, network, lid, self.problems, **about)
         if lid < max(RELEASE_HEIGHT.values()):
