@@ -124,6 +124,7 @@ def block_statistics(
     ...     clock=Clock(hours, hours, utc_offset=0.0, timezone="UTC"),
     ...     background=Background(np.full(24, 30.0), np.full(24, 1.5), None),
     ...     calm=np.zeros(24, dtype=bool),
+    ...     raised=np.zeros(24, dtype=bool),
     ...     ugm3_per_ppb=1.9125,
     ... )
     >>> made.no2_mean_ppb, made.no2_road_mean_ppb, made.no2_1h_p98_ppb

@@ -76,7 +76,7 @@ def judge(
     >>> year = np.array([2023])
     >>> made = judge(
     ...     standard("eu-2008-annual"),
-    ...     Statistics(year, *(np.array([[20.0, 22.0]]) for _ in range(8))),
+    ...     Statistics(year, *(np.array([[20.0, 22.0]]) for _ in range(10))),
     ...     None,
     ...     kinds=("home", "roadside"),
     ...     on_road=np.array([False, False]),
