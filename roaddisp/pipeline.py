@@ -112,13 +112,14 @@ def run(study: Study, *, scenario: str | None = None, progress: Progress | None 
             terrain=chosen.options.terrain,
             calms_at=_calms_at(chosen),
         )
-        blocks = hours(tables, strengths, weather, chosen.background, _conversion(chosen))
+        conversion = _conversion(chosen)
+        blocks = hours(tables, strengths, weather, chosen.background, conversion)
         folded = fold(
             _told(blocks, len(chosen.receptors), progress),
             clock=chosen.clock,
             background=chosen.background,
             weather=weather,
-            ugm3_per_ppb=chosen.options.ugm3_per_ppb,
+            conversion=conversion,
             calms=chosen.options.calms,
             kept=_kept(chosen),
         )

@@ -8,6 +8,7 @@ from typing import Any
 
 import numpy as np
 
+from roaddisp.engine.hours import Conversion, completed
 from roaddisp.model import (
     Background,
     CalmRule,
@@ -18,7 +19,7 @@ from roaddisp.model import (
 )
 from roaddisp.standards.statistics import block_statistics, join_statistics
 
-HOURLY_FIELDS = ("nox_road_ugm3", "no2_primary_road_ppb", "no2_ppb", "no_ppb", "o3_ppb")
+CARRIED = ("nox_road_ugm3", "no2_primary_road_ppb", "no2_ppb")
 """What an `HourlyBlock` holds of each receptor and hour."""
 
 
@@ -41,7 +42,7 @@ def fold(
     clock: Clock,
     background: Background,
     weather: WeatherHours,
-    ugm3_per_ppb: float,
+    conversion: Conversion,
     calms: CalmRule,
     kept: Sequence[int],
 ) -> Folded:
@@ -53,7 +54,7 @@ def fold(
         In the order of the receptors.
     clock, background, weather
         Of the blocks' hours.
-    ugm3_per_ppb : float
+    conversion : Conversion
     calms : "both", "leave-out" or "worst-direction"
         Which calm hours the statistics take.
     kept : sequence of int, ascending
@@ -72,7 +73,7 @@ def fold(
             background=background,
             calm=weather.calm,
             raised=weather.raised,
-            ugm3_per_ppb=ugm3_per_ppb,
+            ugm3_per_ppb=conversion.ugm3_per_ppb,
         )
 
     statistics: list[Statistics] = []
@@ -88,7 +89,7 @@ def fold(
     return Folded(
         statistics=join_statistics(statistics),
         worst=join_statistics(worst) if worst else None,
-        hours=_joined(hours),
+        hours=completed(_joined(hours), background, conversion),
     )
 
 
@@ -98,7 +99,7 @@ def with_calms(block: HourlyBlock) -> HourlyBlock:
     if worst is None:
         return block
     whole = {}
-    for name in HOURLY_FIELDS:
+    for name in CARRIED:
         values = getattr(block, name).copy()
         values[:, worst.hours] = getattr(worst, name)
         whole[name] = values
@@ -109,14 +110,12 @@ def _rows(block: HourlyBlock, kept: Sequence[int]) -> HourlyBlock:
     """Keep the rows of a block whose hours were asked for."""
     first, stop = block.receptors.start, block.receptors.stop
     rows = [index - first for index in kept if first <= index < stop]
-    return replace(
-        block, worst=None, **{name: getattr(block, name)[rows] for name in HOURLY_FIELDS}
-    )
+    return replace(block, worst=None, **{name: getattr(block, name)[rows] for name in CARRIED})
 
 
 def _joined(blocks: Sequence[HourlyBlock]) -> HourlyBlock:
     arrays: dict[str, Any] = {
-        name: np.concatenate([getattr(block, name) for block in blocks]) for name in HOURLY_FIELDS
+        name: np.concatenate([getattr(block, name) for block in blocks]) for name in CARRIED
     }
     count = len(arrays["no2_ppb"])
     return HourlyBlock(receptors=slice(0, count), hours=blocks[0].hours, **arrays)

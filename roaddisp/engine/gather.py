@@ -8,15 +8,16 @@ import numpy as np
 from roaddisp.dispersion.compiling import parallel_compiled
 from roaddisp.model import Float32Array, FloatArray, IntArray
 
-UGM3_PER_GM3 = 1e6
-
 
 @parallel_compiled
-def gather_hours(table: Float32Array, weight: FloatArray, of_hour: IntArray) -> FloatArray:
-    """Sum the groups of each hour: (K, R, T) [ug/m3].
+def gather_hours(
+    table: Float32Array, weight: FloatArray, of_hour: IntArray, units: FloatArray
+) -> FloatArray:
+    """Sum the groups of each hour: (K, R, T).
 
     ``table`` (R, W, K, G) [g/m3 at 1 m/s], ``weight`` (T, K, G) shape over wind
-    speed [s/m], ``of_hour`` (T,) state of each hour, -1 for none (NaN results).
+    speed [s/m], ``of_hour`` (T,) state of each hour, -1 for none (NaN results),
+    ``units`` (K,) from g/m3 to the tracer's unit.
     """
     receptors, _, tracers, groups = table.shape
     hours = of_hour.size
@@ -31,7 +32,7 @@ def gather_hours(table: Float32Array, weight: FloatArray, of_hour: IntArray) -> 
                 total = 0.0
                 for g in range(groups):
                     total += table[r, w, k, g] * weight[t, k, g]
-                road[k, r, t] = total * UGM3_PER_GM3
+                road[k, r, t] = total * units[k]
     return road
 
 
@@ -42,13 +43,14 @@ def gather_worst(
     first: IntArray,
     directions: int,
     ozone: FloatArray,
+    units: FloatArray,
 ) -> FloatArray:
     """Run calm hours in every direction and keep the one that makes most NO2.
 
     ``table`` (R, W, K, G), ``weight`` (Tc, K, G), ``first`` (Tc,) first state of
-    each calm hour, ``ozone`` (Tc,) [ug/m3 as NO2-equivalent, the mass of NO2
-    that the hour's ozone can make]. Returns (K, R, Tc) [ug/m3]. Background NO2
-    is the same in every direction, so the road's own NO2 decides.
+    each calm hour, ``ozone`` (Tc,) [ppb], ``units`` (K,) as in `gather_hours`, the
+    second to ppb. Returns (K, R, Tc). Background NO2 is the same in every direction,
+    so the road's own NO2 decides.
     """
     receptors, _, tracers, groups = table.shape
     hours = first.size
@@ -62,11 +64,11 @@ def gather_worst(
                 for g in range(groups):
                     nox += table[r, w, 0, g] * weight[t, 0, g]
                     primary += table[r, w, 1, g] * weight[t, 1, g]
-                nox *= UGM3_PER_GM3
-                primary *= UGM3_PER_GM3
+                nox *= units[1]
+                primary *= units[1]
                 made = primary + min(nox - primary, ozone[t])
                 if not made <= most:
                     most = made
-                    road[0, r, t] = nox
+                    road[0, r, t] = nox / units[1] * units[0]
                     road[1, r, t] = primary
     return road

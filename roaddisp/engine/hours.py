@@ -9,6 +9,7 @@ from typing import Literal
 import numpy as np
 
 from roaddisp.chemistry.ozone_limiting import ozone_limited
+from roaddisp.chemistry.ozone_loop import limited_no2
 from roaddisp.constants import CALM_PLUME_WIND
 from roaddisp.dispersion.compiling import ONE_AT_A_TIME
 from roaddisp.engine.gather import gather_hours, gather_worst
@@ -23,8 +24,10 @@ from roaddisp.model import (
     WeatherHours,
 )
 
-RECEPTORS_AT_ONCE = 256
-"""Receptors whose hours are held at once: about 100 MB for a year."""
+RECEPTORS_AT_ONCE = 64
+"""Receptors whose hours are held at once: about 15 MB for a year, near the processor."""
+
+UGM3_PER_GM3 = 1e6
 
 
 @dataclass(frozen=True)
@@ -33,6 +36,11 @@ class Conversion:
 
     method: Literal["ozone-limited"]
     ugm3_per_ppb: float
+
+    @property
+    def units(self) -> FloatArray:
+        """(K,): from g/m3 to ug/m3 of NOx and ppb of primary NO2."""
+        return np.array([UGM3_PER_GM3, UGM3_PER_GM3 / self.ugm3_per_ppb])
 
 
 def hours(
@@ -70,7 +78,7 @@ def hours(
         states = response.states
         table = np.ascontiguousarray(response.table.transpose(3, 0, 1, 2))
         with ONE_AT_A_TIME:
-            road = gather_hours(table, weight, states.of_hour)
+            road = gather_hours(table, weight, states.of_hour, conversion.units)
         worst = None
         if states.calm_hours.size:
             worst = _worst_direction(response, table, strengths, background, conversion)
@@ -105,7 +113,8 @@ def _worst_direction(
             np.ascontiguousarray(weight),
             response.states.calm_first,
             response.states.directions,
-            background.o3[calm] * conversion.ugm3_per_ppb,
+            background.o3[calm],
+            conversion.units,
         )
     return _block(response.receptors, calm, road, background, conversion, None)
 
@@ -118,22 +127,46 @@ def _block(
     conversion: Conversion,
     worst: HourlyBlock | None,
 ) -> HourlyBlock:
-    """Turn road mass (K, R, T) [ug/m3] of the named hours into a block."""
-    nox, primary = road / conversion.ugm3_per_ppb
-    no2, no, o3 = ozone_limited(
-        nox,
-        primary,
+    """Make a block of road NOx [ug/m3] and primary NO2 [ppb] (K, R, T) of the named hours."""
+    nox, primary = road
+    with ONE_AT_A_TIME:
+        no2 = limited_no2(
+            nox,
+            primary,
+            background.o3[hours],
+            background.no2[hours],
+            conversion.ugm3_per_ppb,
+        )
+    return HourlyBlock(
+        receptors=receptors,
+        hours=hours,
+        nox_road_ugm3=nox,
+        no2_primary_road_ppb=primary,
+        no2_ppb=no2,
+        worst=worst,
+    )
+
+
+def completed(block: HourlyBlock, background: Background, conversion: Conversion) -> HourlyBlock:
+    """Add the NO and the ozone left to a block, which statistics do without.
+
+    Parameters
+    ----------
+    block : HourlyBlock
+    background : Background
+        Of all hours of the run.
+    conversion : Conversion
+
+    Returns
+    -------
+    HourlyBlock
+    """
+    hours = block.hours
+    _, no, o3 = ozone_limited(
+        block.nox_road_ugm3 / conversion.ugm3_per_ppb,
+        block.no2_primary_road_ppb,
         o3=background.o3[hours],
         no2_background=background.no2[hours],
         no_background=None if background.no is None else background.no[hours],
     )
-    return HourlyBlock(
-        receptors=receptors,
-        hours=hours,
-        nox_road_ugm3=road[0],
-        no2_primary_road_ppb=primary,
-        no2_ppb=no2,
-        no_ppb=no,
-        o3_ppb=o3,
-        worst=worst,
-    )
+    return replace(block, no_ppb=no, o3_ppb=o3)

@@ -168,7 +168,9 @@ class HourlyBlock:
     ----------
     receptors : slice
     hours : (T,) int
-    nox_road_ugm3, no2_primary_road_ppb, no2_ppb, no_ppb, o3_ppb : (R, T)
+    nox_road_ugm3, no2_primary_road_ppb, no2_ppb : (R, T)
+    no_ppb, o3_ppb : (R, T) or None
+        In total and left over; only of hours that are kept.
     worst : HourlyBlock or None
     """
 
@@ -177,6 +179,6 @@ class HourlyBlock:
     nox_road_ugm3: FloatArray
     no2_primary_road_ppb: FloatArray
     no2_ppb: FloatArray
-    no_ppb: FloatArray
-    o3_ppb: FloatArray
+    no_ppb: FloatArray | None = None
+    o3_ppb: FloatArray | None = None
     worst: HourlyBlock | None = None

@@ -1,4 +1,4 @@
-"""Write data/line_integral_pool.csv: line integrals by scipy's adaptive quadrature.
+"""Write data/line_integral_pool.npz: line integrals by scipy's adaptive quadrature.
 
 Imports nothing from the package. Briggs' curves (Briggs 1973, ATDL contribution 79,
 as reprinted by Gifford 1976) and the integrand are written out again here.
@@ -8,7 +8,6 @@ as reprinted by Gifford 1976) and the integrand are written out again here.
 
 from __future__ import annotations
 
-import csv
 import itertools
 import math
 from pathlib import Path
@@ -16,10 +15,10 @@ from pathlib import Path
 import numpy as np
 from scipy.integrate import quad
 
-POOL = Path(__file__).parent / "data" / "line_integral_pool.csv"
+POOL = Path(__file__).parent / "data" / "line_integral_pool.npz"
 SEED = 20250117
 KINDS = ("anywhere", "axis", "inside", "beyond", "parallel", "roadside")
-PER_KIND = 80
+PER_KIND = 900
 
 CROSSWIND = {
     "open": {"A": 0.22, "B": 0.16, "C": 0.11, "D": 0.08, "E": 0.06, "F": 0.04},
@@ -165,12 +164,8 @@ def main():
             if case["concentration"] > 1e-6 * scale or random.uniform() < 0.05:
                 rows.append(case)
                 kept += 1
-    with POOL.open("w", newline="") as file:
-        writer = csv.DictWriter(file, rows[0].keys(), lineterminator="\n")
-        writer.writeheader()
-        writer.writerows(
-            {k: v if isinstance(v, str) else repr(v) for k, v in row.items()} for row in rows
-        )
+    columns = {name: np.array([row[name] for row in rows]) for name in rows[0]}
+    np.savez_compressed(POOL, **columns)
 
 
 if __name__ == "__main__":
