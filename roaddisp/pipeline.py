@@ -187,6 +187,8 @@ def _weather(scenario: Scenario, strengths: LinkStrengths) -> WeatherHours:
         wind_floor=options.wind_floor,
         calm_threshold=options.calm_threshold,
         plume_heights=strengths.wind_height,
+        direction_step=options.direction_step,
+        direction_seed=options.direction_seed,
     )
 
 

@@ -173,6 +173,18 @@ def test_built_in_factors_are_marked_wherever_they_show(tmp_path: Path) -> None:
     assert any("built-in" in text for text in [run.hourly.attrs["comment"]])
 
 
+def test_spread_directions_are_drawn_once_and_recorded(tmp_path: Path, plain: rd.Result) -> None:
+    """The same seed gives the same hours; the record tells step and seed."""
+    edit = replaced(
+        'anemometer_height = "10 m"', 'anemometer_height = "10 m"\ndirection_step = "10 deg"'
+    )
+    first, second = (made(tmp_path / name, without_grid, edit) for name in "ab")
+    np.testing.assert_array_equal(first.hourly["no2_ppb"], second.hourly["no2_ppb"])
+    assert first.record["settings"]["weather"]["direction_step"] == "10 deg"
+    assert first.record["settings"]["weather"]["direction_seed"] == 1
+    assert first.record["counts"]["weather_states"] > plain.record["counts"]["weather_states"]
+
+
 def test_an_unknown_scenario_is_refused(plain: rd.Result) -> None:
     with pytest.raises(rd.StudyError, match="no scenario of this name") as caught:
         rd.run(plain.study, scenario="bild")

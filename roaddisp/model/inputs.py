@@ -270,6 +270,8 @@ class Options:
     wind_floor: float
     calm_threshold: float
     calms: CalmRule
+    direction_step: float
+    direction_seed: int
     curves: Literal["briggs"]
     wake_margin: float
     conversion: Literal["ozone-limited"]

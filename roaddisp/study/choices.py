@@ -38,6 +38,8 @@ def read_options(
         wind_floor=station.wind_floor,
         calm_threshold=station.calm_threshold,
         calms=station.calms,
+        direction_step=station.direction_step or 0.0,
+        direction_seed=station.direction_seed,
         curves=spread.curves,
         wake_margin=spread.wake_margin,
         conversion=convert.method,

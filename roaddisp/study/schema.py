@@ -223,6 +223,15 @@ class WeatherSection(FileSection):
     calms: Annotated[str, AfterValidator(Choice(("both", "leave-out", "worst-direction")))] = _key(
         "calm hours: left out of the statistics, run in the worst direction, or both ways", "both"
     )
+    direction_step: Annotated[float, BeforeValidator(Measure("angle", 1.0, 45.0))] | None = _key(
+        "step to which the station rounds directions; each is then spread within it by a "
+        "seeded draw, for directions in steps line up with straight roads",
+        None,
+        allowed='an angle with its unit, as "10 deg"',
+    )
+    direction_seed: Annotated[int, Field(ge=0)] = _key(
+        "seed of that draw", 1, allowed="a whole number, 0 or more"
+    )
 
 
 class ConstantAir(Section):

@@ -212,6 +212,8 @@ def _scenario(network: Network, receptors: Receptors, *, built_in: bool, sites: 
             wind_floor=1.0,
             calm_threshold=0.5,
             calms="both",
+            direction_step=0.0,
+            direction_seed=1,
             curves="briggs",
             wake_margin=0.0,
             conversion="ozone-limited",

@@ -215,3 +215,19 @@ def test_empty_cloud_is_a_missing_hour() -> None:
 def test_a_station_without_stability_or_cloud_is_refused() -> None:
     with pytest.raises(ValueError, match="stability, or cloud and ceiling"):
         weather(replace(STATION, stability=None))
+
+
+def test_spread_directions_stay_within_half_a_step_and_even_out() -> None:
+    """10-degree reports become whole half-degrees: 360 distinct, each about as often."""
+    from roaddisp.weather.wind import spread_directions
+
+    reported = np.tile(np.arange(10.0, 370.0, 10.0), 2000)
+    spread = spread_directions(reported, step=10.0, seed=5)
+    moved = np.mod(spread - reported + 180.0, 360.0) - 180.0
+    assert np.abs(moved).max() == 4.5
+    values, counts = np.unique(spread, return_counts=True)
+    assert values.size == 360
+    assert counts.min() > 0.7 * counts.mean()
+    again = spread_directions(reported, step=10.0, seed=5)
+    np.testing.assert_array_equal(spread, again)
+    assert (spread != spread_directions(reported, step=10.0, seed=6)).any()
