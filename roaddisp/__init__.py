@@ -14,11 +14,15 @@ from importlib import import_module
 from typing import TYPE_CHECKING
 
 if TYPE_CHECKING:
+    from roaddisp.analysis.what_if import keep_responses as keep_responses
+    from roaddisp.analysis.what_if import link_contributions as link_contributions
     from roaddisp.chemistry.ozone_limiting import ozone_limited_no2 as ozone_limited_no2
     from roaddisp.chemistry.reaction import reaction_limited_no2 as reaction_limited_no2
     from roaddisp.dispersion.kernel import response_table as response_table
     from roaddisp.dispersion.reference import unit_concentration as unit_concentration
     from roaddisp.emissions.strength import line_strength as line_strength
+    from roaddisp.engine.kept_file import read_responses as read_responses
+    from roaddisp.engine.kept_file import write_responses as write_responses
     from roaddisp.errors import NotYetError as NotYetError
     from roaddisp.errors import OutputError as OutputError
     from roaddisp.errors import Problem as Problem
@@ -37,6 +41,10 @@ _HOME = {
     "read_study": "roaddisp.study.read",
     "run": "roaddisp.pipeline",
     "run_all": "roaddisp.pipeline",
+    "keep_responses": "roaddisp.analysis.what_if",
+    "link_contributions": "roaddisp.analysis.what_if",
+    "read_responses": "roaddisp.engine.kept_file",
+    "write_responses": "roaddisp.engine.kept_file",
     "unit_concentration": "roaddisp.dispersion.reference",
     "response_table": "roaddisp.dispersion.kernel",
     "ozone_limited_no2": "roaddisp.chemistry.ozone_limiting",

@@ -8,7 +8,7 @@ from __future__ import annotations
 import time
 from collections.abc import Callable, Iterator
 from contextlib import contextmanager
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 
 import numpy as np
 
@@ -16,21 +16,24 @@ from roaddisp.dispersion.kernel import needs_compiling
 from roaddisp.emissions.strength import link_strengths
 from roaddisp.engine.fold import Folded, fold
 from roaddisp.engine.hours import Conversion, hours
-from roaddisp.engine.responses import responses
+from roaddisp.engine.kept import KeptResponses, fingerprint, regrouped
+from roaddisp.engine.responses import responses as compute_responses
 from roaddisp.engine.states import weather_states
-from roaddisp.engine.tally import counts, raised_hours, versions
+from roaddisp.engine.tally import counts, kept_note, raised_hours, versions
 from roaddisp.errors import Problem, StudyError
 from roaddisp.geometry.segments import road_segments
 from roaddisp.model import (
     BoolArray,
     HourlyBlock,
     LinkStrengths,
+    Responses,
     Result,
     Scenario,
     Segments,
     Study,
     Verdicts,
     WeatherHours,
+    WeatherStates,
 )
 from roaddisp.standards.rules import standard
 from roaddisp.standards.verdicts import judge
@@ -42,19 +45,36 @@ Progress = Callable[[str, int, int], None]
 
 
 @dataclass
-class _Timer:
+class Timer:
     """Seconds spent in each stage."""
 
     seconds: dict[str, float] = field(default_factory=dict)
 
     @contextmanager
     def stage(self, name: str) -> Iterator[None]:
+        """Time what is done within."""
         start = time.perf_counter()
         yield
         self.seconds[name] = round(time.perf_counter() - start, 3)
 
 
-def run(study: Study, *, scenario: str | None = None, progress: Progress | None = None) -> Result:
+@dataclass(frozen=True)
+class Prepared:
+    """All that comes before the engine."""
+
+    strengths: LinkStrengths
+    weather: WeatherHours
+    states: WeatherStates
+    segments: Segments
+
+
+def run(
+    study: Study,
+    *,
+    scenario: str | None = None,
+    progress: Progress | None = None,
+    responses: KeptResponses | None = None,
+) -> Result:
     """Run one scenario of a study.
 
     Parameters
@@ -65,6 +85,10 @@ def run(study: Study, *, scenario: str | None = None, progress: Progress | None 
         Name of a scenario; the study as it stands (``"base"``) where not given.
     progress : callable, optional
         Called as ``progress(stage, done, total)`` while the run lasts.
+    responses : KeptResponses, optional
+        From `keep_responses`: the run is then of the receptors kept, and takes a
+        blink. The heights of the sources are those of the kept responses; the
+        record says by how much this study's differ.
 
     Returns
     -------
@@ -73,7 +97,7 @@ def run(study: Study, *, scenario: str | None = None, progress: Progress | None 
     Raises
     ------
     StudyError
-        Where the study has no such scenario.
+        Where the study has no such scenario, or kept responses do not fit it.
 
     Examples
     --------
@@ -86,48 +110,33 @@ def run(study: Study, *, scenario: str | None = None, progress: Progress | None 
     True
     >>> folder.cleanup()
     """
-    chosen = _scenario(study, scenario or "base")
-    timer = _Timer()
-
-    with timer.stage("traffic and emissions"):
-        strengths = link_strengths(
-            chosen.network,
-            profiles=chosen.profiles,
-            counts=chosen.counts,
-            fleet=chosen.fleet,
-            factors=chosen.factors,
-            clock=chosen.clock,
-        )
-    with timer.stage("weather"):
-        weather = _weather(chosen, strengths)
-        states = weather_states(weather, calms=chosen.options.calms)
-    with timer.stage("geometry"):
-        segments = _segments(chosen)
+    chosen = named_scenario(study, scenario or "base")
+    if responses is not None:
+        chosen = only(chosen, responses.receptors)
+    timer = Timer()
+    ready = prepare(chosen, timer)
     with timer.stage("hours and statistics"):
-        tables = responses(
-            segments,
-            strengths,
-            chosen.receptors,
-            states,
-            terrain=chosen.options.terrain,
-            calms_at=_calms_at(chosen),
-        )
         conversion = _conversion(chosen)
-        blocks = hours(tables, strengths, weather, chosen.background, conversion)
+        tables = (
+            _tables(chosen, ready)
+            if responses is None
+            else _kept_tables(study, chosen, ready, responses)
+        )
+        blocks = hours(tables, ready.strengths, ready.weather, chosen.background, conversion)
         folded = fold(
             _told(blocks, len(chosen.receptors), progress),
             clock=chosen.clock,
             background=chosen.background,
-            weather=weather,
+            weather=ready.weather,
             conversion=conversion,
             calms=chosen.options.calms,
             kept=_kept(chosen),
         )
-    present = weather.calm | _has_value(chosen, strengths, weather)
+    present = ready.weather.calm | _has_value(chosen, ready)
     return Result(
         study=study,
         scenario=chosen,
-        strengths=strengths,
+        strengths=ready.strengths,
         statistics=folded.statistics,
         worst=folded.worst,
         verdicts=_verdicts(chosen, present, folded),
@@ -137,7 +146,12 @@ def run(study: Study, *, scenario: str | None = None, progress: Progress | None 
             "versions": versions(),
             "inputs": [vars(file) for file in chosen.files],
             "settings": chosen.settings,
-            "counts": counts(chosen, strengths, weather, states, segments, present)
+            "responses": "computed in this run"
+            if responses is None
+            else kept_note(responses, ready.strengths),
+            "counts": counts(
+                chosen, ready.strengths, ready.weather, ready.states, ready.segments, present
+            )
             | {"hours_that_make_a_statistic": raised_hours(chosen, folded.statistics)},
             "warnings": [vars(caution) for caution in study.cautions],
             "timings_s": timer.seconds,
@@ -161,7 +175,33 @@ def run_all(study: Study, *, progress: Progress | None = None) -> dict[str, Resu
     return {name: run(study, scenario=name, progress=progress) for name in study.scenarios}
 
 
-def _scenario(study: Study, name: str) -> Scenario:
+def prepare(scenario: Scenario, timer: Timer) -> Prepared:
+    """Take a scenario to the door of the engine."""
+    with timer.stage("traffic and emissions"):
+        strengths = link_strengths(
+            scenario.network,
+            profiles=scenario.profiles,
+            counts=scenario.counts,
+            fleet=scenario.fleet,
+            factors=scenario.factors,
+            clock=scenario.clock,
+        )
+    with timer.stage("weather"):
+        weather = _weather(scenario, strengths)
+        states = weather_states(weather, calms=scenario.options.calms)
+    with timer.stage("geometry"):
+        segments = _segments(scenario)
+    return Prepared(strengths, weather, states, segments)
+
+
+def named_scenario(study: Study, name: str) -> Scenario:
+    """Find a scenario of a study.
+
+    Raises
+    ------
+    StudyError
+        Where there is none of this name.
+    """
     if name not in study.scenarios:
         problem = Problem(
             severity="error",
@@ -202,6 +242,61 @@ def _conversion(scenario: Scenario) -> Conversion:
     return Conversion(method=options.conversion, ugm3_per_ppb=options.ugm3_per_ppb)
 
 
+def _tables(scenario: Scenario, ready: Prepared) -> Iterator[Responses]:
+    return compute_responses(
+        ready.segments,
+        ready.strengths,
+        scenario.receptors,
+        ready.states,
+        terrain=scenario.options.terrain,
+        calms_at=calms_at(scenario),
+    )
+
+
+def _kept_tables(
+    study: Study, scenario: Scenario, ready: Prepared, kept: KeptResponses
+) -> Iterator[Responses]:
+    check_fit(study, scenario, ready, kept)
+    return regrouped(kept, ready.strengths)
+
+
+def check_fit(study: Study, scenario: Scenario, ready: Prepared, kept: KeptResponses) -> None:
+    """Refuse kept responses that were computed for something else.
+
+    Raises
+    ------
+    StudyError
+        Naming what differs: roads, receptors, weather states, terrain or scheme.
+    """
+    own = fingerprint(ready.segments, scenario.receptors, ready.states, scenario.options.terrain)
+    others = [part for part, value in own.items() if kept.fingerprint.get(part) != value]
+    if others:
+        problem = Problem(
+            severity="error",
+            file=study.path.name,
+            place=f"scenario {scenario.name}",
+            value=f"other {', other '.join(others)}",
+            allowed="the roads, receptors, weather and options of the kept responses",
+            mend="compute the responses again for this study",
+            message="the kept responses are not of this study",
+        )
+        raise StudyError([problem])
+
+
+def only(scenario: Scenario, chosen: tuple[int, ...]) -> Scenario:
+    """Leave the chosen receptors of a scenario."""
+    every = scenario.receptors
+    if chosen == tuple(range(len(every))):
+        return scenario
+    if max(chosen, default=-1) >= len(every):
+        return replace(scenario, receptors=every.taken(()))
+    receptors = every.taken(chosen)
+    wanted = scenario.options.hourly
+    names = set(receptors.receptor)
+    hourly = wanted if wanted == "all" else tuple(name for name in wanted if name in names)
+    return replace(scenario, receptors=receptors, options=replace(scenario.options, hourly=hourly))
+
+
 def _told(
     blocks: Iterator[HourlyBlock], total: int, progress: Progress | None
 ) -> Iterator[HourlyBlock]:
@@ -214,7 +309,7 @@ def _told(
         say(stage, block.receptors.stop, total)
 
 
-def _calms_at(scenario: Scenario) -> BoolArray:
+def calms_at(scenario: Scenario) -> BoolArray:
     """Receptors whose calm hours are run: all, or those that some standard judges."""
     receptors = scenario.receptors
     if scenario.options.calms == "worst-direction":
@@ -232,16 +327,16 @@ def _kept(scenario: Scenario) -> tuple[int, ...]:
     return tuple(names.index(name) for name in wanted)
 
 
-def _has_value(scenario: Scenario, strengths: LinkStrengths, weather: WeatherHours) -> BoolArray:
+def _has_value(scenario: Scenario, ready: Prepared) -> BoolArray:
     """Hours that lack neither weather, nor traffic, nor background."""
     background = scenario.background
     known: BoolArray = (
-        ~weather.missing
-        & np.isfinite(strengths.shape).all(axis=(0, 1))
+        ~ready.weather.missing
+        & np.isfinite(ready.strengths.shape).all(axis=(0, 1))
         & np.isfinite(background.o3)
         & np.isfinite(background.no2)
     )
-    return known & ~weather.calm
+    return known & ~ready.weather.calm
 
 
 def _verdicts(scenario: Scenario, present: BoolArray, folded: Folded) -> tuple[Verdicts, ...]:

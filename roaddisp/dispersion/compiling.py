@@ -42,6 +42,11 @@ def parallel_compiled(function: Callable[P, T]) -> Callable[P, T]:
     return _jit(function, fastmath=FAST, parallel=True)
 
 
+def parallel_sums_compiled(function: Callable[P, T]) -> Callable[P, T]:
+    """As `parallel_compiled`, and sums may be taken in an order that vectorises."""
+    return _jit(function, fastmath=FAST | {"reassoc"}, parallel=True)
+
+
 def _jit(function: Callable[P, T], **options: Any) -> Callable[P, T]:
     settings: Any = numba.config
     standing = settings.CACHE_DIR

@@ -72,17 +72,24 @@ def hours(
         its ``worst`` in the direction that gives each receptor most NO2, with
         ``CALM_PLUME_WIND`` at the plume.
     """
-    weight = np.ascontiguousarray((strengths.shape / weather.wind_speed).transpose(2, 0, 1))
+    weight = _by_hour(strengths.shape / weather.wind_speed)
     every = np.arange(weather.calm.size)
     for response in _parts(responses):
         states = response.states
-        table = np.ascontiguousarray(response.table.transpose(3, 0, 1, 2))
+        by_receptor = np.ascontiguousarray(response.table.transpose(3, 0, 1, 2))
+        table = by_receptor.reshape(*by_receptor.shape[:2], -1)
         with ONE_AT_A_TIME:
             road = gather_hours(table, weight, states.of_hour, conversion.units)
         worst = None
         if states.calm_hours.size:
             worst = _worst_direction(response, table, strengths, background, conversion)
         yield _block(response.receptors, every, road, background, conversion, worst)
+
+
+def _by_hour(weight: FloatArray) -> FloatArray:
+    """Bring weights (K, G, T) into rows of an hour (T, K G), as the loops read them."""
+    hours = weight.shape[-1]
+    return np.ascontiguousarray(weight.reshape(-1, hours).T)
 
 
 def _parts(responses: Iterable[Responses]) -> Iterator[Responses]:
@@ -106,11 +113,11 @@ def _worst_direction(
     conversion: Conversion,
 ) -> HourlyBlock:
     calm = response.states.calm_hours
-    weight = strengths.shape[:, :, calm].transpose(2, 0, 1) / CALM_PLUME_WIND
+    weight = _by_hour(strengths.shape[:, :, calm] / CALM_PLUME_WIND)
     with ONE_AT_A_TIME:
         road = gather_worst(
             table,
-            np.ascontiguousarray(weight),
+            weight,
             response.states.calm_first,
             response.states.directions,
             background.o3[calm],

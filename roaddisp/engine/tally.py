@@ -2,12 +2,14 @@
 
 from __future__ import annotations
 
+from functools import cache
 from importlib.metadata import version
 from platform import machine, python_version
 from typing import Any
 
 import numpy as np
 
+from roaddisp.engine.kept import KeptResponses
 from roaddisp.model import (
     BoolArray,
     LinkStrengths,
@@ -67,6 +69,17 @@ def raised_hours(scenario: Scenario, statistics: Statistics) -> dict[str, Any]:
     return told
 
 
+def kept_note(kept: KeptResponses, strengths: LinkStrengths) -> dict[str, Any]:
+    """Say that responses were kept, and how far their sources are from this run's."""
+    change = np.abs(strengths.release_height - kept.release_height)
+    return {
+        "kept": "with links apart" if kept.apart else "by groups of links",
+        "largest_change_of_release_height_m": float(change.max(initial=0.0)),
+        "fingerprint": dict(kept.fingerprint),
+    }
+
+
+@cache
 def versions() -> dict[str, str]:
     """Versions of what the numbers rest on."""
     from roaddisp import __version__

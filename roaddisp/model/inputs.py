@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any, Literal
@@ -246,6 +246,23 @@ class Receptors:
     def xyz(self) -> FloatArray:
         """(R, 3) [m]: x, y and height above ground."""
         return np.column_stack([self.x, self.y, self.z])
+
+    def taken(self, chosen: Sequence[int]) -> Receptors:
+        """Return the receptors at these places, without the grid they may be of."""
+        rows = np.array(chosen, dtype=np.int64)
+        return Receptors(
+            receptor=tuple(self.receptor[row] for row in rows),
+            site=tuple(self.site[row] for row in rows),
+            kind=tuple(self.kind[row] for row in rows),
+            x=self.x[rows],
+            y=self.y[rows],
+            z=self.z[rows],
+            longitude=self.longitude[rows],
+            latitude=self.latitude[rows],
+            on_road=self.on_road[rows],
+            grid=None,
+            cell=np.full((len(rows), 2), -1),
+        )
 
 
 @dataclass(frozen=True)
