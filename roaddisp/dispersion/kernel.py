@@ -3,7 +3,8 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Sequence
+from collections.abc import Iterator, Sequence
+from contextlib import contextmanager
 from typing import Final
 
 import numba
@@ -34,6 +35,7 @@ def response_table(
     sigma_z0: npt.ArrayLike = 1.2,
     sigma_y0: npt.ArrayLike = 0.0,
     mixing_height: npt.ArrayLike = math.inf,
+    threads: int | None = None,
 ) -> Float32Array:
     """Concentration of groups of segments at 1 m/s, for many weather states at once.
 
@@ -59,6 +61,9 @@ def response_table(
         Initial spread, vertical (above 0) and crosswind (not negative) [m].
     mixing_height : scalar or (W,)
         Height of the lid, inf for none [m].
+    threads : int, optional
+        How many threads share the work, at least 1; all that numba was started
+        with where not given or where that is fewer. The values do not depend on it.
 
     Returns
     -------
@@ -69,8 +74,8 @@ def response_table(
     Raises
     ------
     ValueError
-        For an argument out of its range, and for a receptor within 1e-6 m of a
-        segment in plan whose ``sigma_y0`` is 0.
+        For an argument out of its range, ``threads`` below 1, and for a receptor within
+        1e-6 m of a segment in plan whose ``sigma_y0`` is 0.
 
     Notes
     -----
@@ -121,6 +126,7 @@ def response_table(
         piece=ends,
         near=np.zeros(count),
         far=np.full(count, math.inf),
+        threads=threads,
     )
     return table if strengths.ndim == 2 else np.ascontiguousarray(table[:, 0])
 
@@ -143,6 +149,8 @@ def windowed_table(
     near: FloatArray,
     far: FloatArray,
     across_only: bool = False,
+    touched_only: bool = False,
+    threads: int | None = None,
 ) -> Float32Array:
     """`response_table` for the engine: each segment serves the receptors in its window.
 
@@ -163,6 +171,12 @@ def windowed_table(
         ``sigma_y0`` is a spread across the segment alone, so that the plume gets
         its component across the wind, ``sigma_y0 |cos(angle of wind and segment)|``.
         For roads of real width: otherwise a road's ends are blurred along it.
+    touched_only : bool
+        Give the change that the lid makes instead: the sum, over the pairs whose lid
+        is felt, of their value under the lid less that without. Added to the table
+        of the same states without lids it gives the table under lids, to rounding.
+    threads : int, optional
+        As in `response_table`.
 
     Returns
     -------
@@ -171,7 +185,7 @@ def windowed_table(
     Raises
     ------
     ValueError
-        Where a class code or a group is out of its range.
+        Where a class code or a group is out of its range, and for ``threads`` below 1.
 
     Examples
     --------
@@ -187,6 +201,19 @@ def windowed_table(
     ... )[0, 0, 0].round(2).tolist()
     [0.0, 0.3100000023841858]
     """
+    if touched_only:
+        under, free = (
+            windowed_table(
+                receptors, ends, wind_from=wind_from, stability_codes=stability_codes,
+                strength=strength, group=group, n_groups=n_groups, terrain=terrain,
+                height=height, sigma_z0=sigma_z0, sigma_y0=sigma_y0, mixing_height=lid,
+                piece=piece, near=near, far=far, across_only=across_only, threads=threads,
+            )
+            for lid in (mixing_height, np.full(len(wind_from), np.inf))
+        )  # fmt: skip
+        return np.asarray(under - free, dtype=np.float32)
+    if threads is not None and threads < 1:
+        raise ValueError(f"threads: {threads}; allowed: 1 and more, or None for all")
     _within("stability_codes", stability_codes, 6)
     _within("group", group, n_groups)
     points = _copy(receptors)
@@ -194,7 +221,7 @@ def windowed_table(
     if table.size == 0 or len(ends) == 0:
         return table
     size = min(BLOCK, max(LEAST_BLOCK, -(-len(points) // BLOCKS_WANTED)))
-    with ONE_AT_A_TIME, numba.parallel_chunksize(1):
+    with ONE_AT_A_TIME, _threads(threads), numba.parallel_chunksize(1):
         stages.fill_table(
             table,
             points,
@@ -216,6 +243,18 @@ def windowed_table(
             across_only,
         )
     return table
+
+
+@contextmanager
+def _threads(wanted: int | None) -> Iterator[None]:
+    """Set the number of threads for one call, under the lock, and put back what was."""
+    standing, settings = numba.get_num_threads(), vars(numba.config)
+    if wanted is not None:
+        numba.set_num_threads(min(wanted, int(settings["NUMBA_NUM_THREADS"])))
+    try:
+        yield
+    finally:
+        numba.set_num_threads(standing)
 
 
 def needs_compiling() -> bool:

@@ -79,7 +79,9 @@ def hours(
         by_receptor = np.ascontiguousarray(response.table.transpose(3, 0, 1, 2))
         table = by_receptor.reshape(*by_receptor.shape[:2], -1)
         with ONE_AT_A_TIME:
-            road = gather_hours(table, weight, states.of_hour, conversion.units)
+            road = gather_hours(
+                table, weight, states.of_hour, response.lid_of_hour(), conversion.units
+            )
         worst = None
         if states.calm_hours.size:
             worst = _worst_direction(response, table, strengths, background, conversion)
@@ -119,6 +121,7 @@ def _worst_direction(
             table,
             weight,
             response.states.calm_first,
+            response.lid_of_calm(),
             response.states.directions,
             background.o3[calm],
             conversion.units,

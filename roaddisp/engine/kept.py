@@ -31,6 +31,7 @@ from roaddisp.model import (
     Terrain,
     WeatherHours,
     WeatherStates,
+    looked_up,
 )
 
 SCHEME: Final = 1
@@ -47,8 +48,10 @@ class KeptBlock:
         Place among the kept receptors.
     calms : bool
         Whether the states of calm hours are among its rows.
-    first : (W + 1,) int
-        First row of each state.
+    lid_row : (V,) int
+        As in `Responses`.
+    first : (W + F + 1,) int
+        First row of each state, and of each lid state that is felt.
     group : (N,) int
         Group of links of each row.
     values : (N, K, R) float32 [g/m3 at 1 m/s]
@@ -57,6 +60,7 @@ class KeptBlock:
 
     receptors: slice
     calms: bool
+    lid_row: IntArray
     first: IntArray
     group: IntArray
     values: Float32Array
@@ -164,7 +168,8 @@ def _rows(response: Responses, all_states: int) -> KeptBlock:
     return KeptBlock(
         receptors=response.receptors,
         calms=len(response.states) == all_states,
-        first=np.searchsorted(state, np.arange(len(response.states) + 1)),
+        lid_row=response.lid_row,
+        first=np.searchsorted(state, np.arange(len(table) + 1)),
         group=group,
         values=np.ascontiguousarray(table[state, group]),
     )
@@ -188,7 +193,10 @@ def fingerprint(
             segments.near, segments.far,
         ),
         "receptors": _digest(receptors.xyz),
-        "weather states": _digest(states.wind_from, states.stability, states.mixing_height),
+        "weather states": _digest(
+            states.wind_from, states.stability, states.lids.wind_from, states.lids.stability,
+            states.lids.mixing_height,
+        ),
     }  # fmt: skip
 
 
@@ -225,10 +233,11 @@ def regrouped(kept: KeptResponses, strengths: LinkStrengths) -> Iterator[Respons
     for block in kept.blocks:
         own = kept.states if block.calms else ordinary
         receptors = block.receptors.stop - block.receptors.start
-        table = np.zeros((len(own), tracers, groups, receptors), dtype=np.float32)
+        rows = block.first.size - 1
+        table = np.zeros((rows, tracers, groups, receptors), dtype=np.float32)
         with ONE_AT_A_TIME:
             add_rows(table, block.first, block.group, block.values, ratio, into)
-        yield Responses(receptors=block.receptors, table=table, states=own)
+        yield Responses(receptors=block.receptors, table=table, states=own, lid_row=block.lid_row)
 
 
 def _scaling(kept: KeptResponses, strengths: LinkStrengths) -> tuple[Float32Array, IntArray]:
@@ -301,13 +310,15 @@ def link_means(kept: KeptResponses, strengths: LinkStrengths, weather: WeatherHo
     weight = strengths.shape / weather.wind_speed
     valued = (kept.states.of_hour >= 0) & np.isfinite(weight).all(axis=(0, 1))
     tracers, groups = weight.shape[:2]
-    by_state = np.zeros((tracers, groups, len(kept.states)))
-    for k in range(tracers):
-        for g in range(groups):
-            np.add.at(by_state[k, g], kept.states.of_hour[valued], weight[k, g, valued])
-    by_state /= max(int(valued.sum()), 1)
     means = np.zeros((tracers, kept.group.size, len(kept.receptors)))
     for block in kept.blocks:
+        by_state = np.zeros((tracers, groups, block.first.size - 1))
+        lid_of_hour = looked_up(block.lid_row, kept.states.lids.of_hour)
+        for hours in (kept.states.of_hour, lid_of_hour):
+            chosen = valued & (hours >= 0)
+            for k, g in np.ndindex(tracers, groups):
+                np.add.at(by_state[k, g], hours[chosen], weight[k, g, chosen])
+        by_state /= max(int(valued.sum()), 1)
         state = np.repeat(np.arange(block.first.size - 1), np.diff(block.first))
         share = (
             strengths.amplitude[:, block.group] * by_state[:, strengths.group[block.group], state]

@@ -3,8 +3,9 @@
 The file is HDF5. Its root bears the attributes ``format`` ("roaddisp responses"),
 ``version`` (1) and ``fingerprint.<part>``, and the datasets ``receptors`` (R,),
 ``group`` (L,), ``basis`` (K, L), ``release_height`` and ``sigma_z0`` (L,). The group
-``states`` has the arrays of `WeatherStates`; ``blocks/<n>`` has ``first``, ``group`` and
-``values`` of each `KeptBlock`, with ``start``, ``stop`` and ``calms`` as attributes.
+``states`` has the arrays of `WeatherStates` and ``states/lids`` those of `LidStates`;
+``blocks/<n>`` has ``lid_row``, ``first``, ``group`` and ``values`` of each `KeptBlock`, with
+``start``, ``stop`` and ``calms`` as attributes.
 """
 
 from __future__ import annotations
@@ -17,7 +18,7 @@ import numpy as np
 
 from roaddisp.engine.kept import KeptBlock, KeptResponses
 from roaddisp.errors import OutputError, Problem, StudyError
-from roaddisp.model import WeatherStates
+from roaddisp.model import LidStates, WeatherStates
 
 FORMAT: Final = "roaddisp responses"
 VERSION: Final = 1
@@ -25,11 +26,11 @@ VERSION: Final = 1
 _STATES: Final = (
     "wind_from",
     "stability",
-    "mixing_height",
     "of_hour",
     "calm_hours",
     "calm_first",
 )
+_LIDS: Final = ("wind_from", "stability", "mixing_height", "of_hour", "calm_first")
 
 
 def write_responses(kept: KeptResponses, path: Path) -> None:
@@ -67,11 +68,14 @@ def _fill(kept: KeptResponses, file: Any) -> None:
     states.attrs["directions"] = kept.states.directions
     for name in _STATES:
         states[name] = getattr(kept.states, name)
+    for name in _LIDS:
+        states[f"lids/{name}"] = getattr(kept.states.lids, name)
     for number, block in enumerate(kept.blocks):
         place = file.create_group(f"blocks/{number}")
         place.attrs["start"], place.attrs["stop"] = block.receptors.start, block.receptors.stop
         place.attrs["calms"] = block.calms
-        place["first"], place["group"] = block.first, block.group
+        for name in ("lid_row", "first", "group"):
+            place[name] = getattr(block, name)
         # the fastest filter: the many zeros of a row are worth it, the digits are not
         place.create_dataset(
             "values", data=block.values, compression="lzf" if block.values.size else None
@@ -116,11 +120,13 @@ def _taken(file: Any) -> KeptResponses:
         states=WeatherStates(
             **{name: states[name][:] for name in _STATES},
             directions=int(states.attrs["directions"]),
+            lids=LidStates(**{name: states[f"lids/{name}"][:] for name in _LIDS}),
         ),
         blocks=tuple(
             KeptBlock(
                 receptors=slice(int(block.attrs["start"]), int(block.attrs["stop"])),
                 calms=bool(block.attrs["calms"]),
+                lid_row=block["lid_row"][:],
                 first=block["first"][:],
                 group=block["group"][:],
                 values=block["values"][:],

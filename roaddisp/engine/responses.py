@@ -3,13 +3,19 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
+from dataclasses import replace
 from itertools import pairwise
 
 import numpy as np
 
 from roaddisp.dispersion.kernel import windowed_table
+from roaddisp.dispersion.lids import lid_is_felt
 from roaddisp.model import (
     BoolArray,
+    Float32Array,
+    FloatArray,
+    IntArray,
+    LidStates,
     LinkStrengths,
     Receptors,
     Responses,
@@ -57,29 +63,84 @@ def responses(
     Responses
         Blocks in the order of the receptors.
     """
-    link = segments.link
-    groups = strengths.shape.shape[1]
-    points = receptors.xyz
     for block, own in _blocks(states, strengths, _every(receptors, calms_at)):
-        table = windowed_table(
-            points[block],
-            segments.ends,
-            wind_from=own.wind_from,
-            stability_codes=own.stability,
-            strength=strengths.amplitude[:, link] * segments.weight,
-            group=strengths.group[link],
-            n_groups=groups,
-            terrain=terrain,
-            height=strengths.release_height[link],
-            sigma_z0=strengths.sigma_z0[link],
-            sigma_y0=segments.sigma_y0,
-            mixing_height=own.mixing_height,
-            piece=segments.piece,
-            near=segments.near,
-            far=segments.far,
-            across_only=True,
-        )
-        yield Responses(receptors=block, table=table, states=own)
+        points = receptors.xyz[block]
+
+        felt = np.flatnonzero(_felt(segments, strengths, points, own.lids, terrain))
+        lid_row = np.full(len(own.lids.wind_from), -1, dtype=np.int64)
+        lid_row[felt] = len(own) + np.arange(felt.size)
+        free = np.full(len(own), np.inf)
+        table = _table(segments, strengths, points, own, free, terrain, changes=False)
+        if felt.size:
+            under = _chosen(own.lids, felt)
+            lids = under.mixing_height
+            change = _table(segments, strengths, points, under, lids, terrain, changes=True)
+            table = np.concatenate([table, change])
+        yield Responses(receptors=block, table=table, states=own, lid_row=lid_row)
+
+
+def _table(
+    segments: Segments,
+    strengths: LinkStrengths,
+    points: FloatArray,
+    states: WeatherStates | LidStates,
+    lids: FloatArray,
+    terrain: Terrain,
+    *,
+    changes: bool,
+) -> Float32Array:
+    """Compute the table (W, K, G, R) of states, or the change that their lids make."""
+    link = segments.link
+    return windowed_table(
+        points,
+        segments.ends,
+        wind_from=states.wind_from,
+        stability_codes=states.stability,
+        strength=strengths.amplitude[:, link] * segments.weight,
+        group=strengths.group[link],
+        n_groups=strengths.shape.shape[1],
+        terrain=terrain,
+        height=strengths.release_height[link],
+        sigma_z0=strengths.sigma_z0[link],
+        sigma_y0=segments.sigma_y0,
+        mixing_height=lids,
+        piece=segments.piece,
+        near=segments.near,
+        far=segments.far,
+        across_only=True,
+        touched_only=changes,
+    )
+
+
+def _felt(
+    segments: Segments,
+    strengths: LinkStrengths,
+    points: FloatArray,
+    lids: LidStates,
+    terrain: Terrain,
+) -> BoolArray:
+    """Lid states that some pair of these receptors and the roads can feel."""
+    if not len(lids.wind_from) or not len(segments.ends):
+        return np.zeros(len(lids.wind_from), dtype=np.bool_)
+    corners = np.concatenate([segments.ends.reshape(-1, 2), points[:, :2]])
+    return lid_is_felt(
+        lids.stability,
+        lids.mixing_height,
+        terrain=terrain,
+        sigma_z0=strengths.sigma_z0,
+        heights=strengths.release_height,
+        receptor_z=points[:, 2],
+        farthest=float(np.hypot(*np.ptp(corners, axis=0))),
+    )
+
+
+def _chosen(lids: LidStates, rows: IntArray) -> LidStates:
+    return replace(
+        lids,
+        wind_from=lids.wind_from[rows],
+        stability=lids.stability[rows],
+        mixing_height=lids.mixing_height[rows],
+    )
 
 
 def _every(receptors: Receptors, calms_at: BoolArray | None) -> BoolArray:
@@ -97,7 +158,8 @@ def _blocks(
         if first == stop:
             continue
         own = states if calms_at[first] else ordinary
-        row_bytes = 4 * max(len(own), 1) * tracers * groups
+        rows = len(own) + len(own.lids.wind_from)
+        row_bytes = 4 * max(rows, 1) * tracers * groups
         size = int(np.clip(TABLE_BYTES // row_bytes, 1, LARGEST_BLOCK))
         for start in range(first, stop, size):
             yield slice(start, min(start + size, stop)), own

@@ -10,7 +10,7 @@ from __future__ import annotations
 import numpy as np
 
 from roaddisp.constants import CALM_DIRECTION_STEP
-from roaddisp.model import CalmRule, FloatArray, IntArray, WeatherHours, WeatherStates
+from roaddisp.model import CalmRule, FloatArray, IntArray, LidStates, WeatherHours, WeatherStates
 
 DIRECTIONS = round(360.0 / CALM_DIRECTION_STEP)
 """Directions tried in a calm hour."""
@@ -26,7 +26,7 @@ def weather_states(weather: WeatherHours, *, calms: CalmRule) -> WeatherStates:
     calms : "both", "leave-out" or "worst-direction"
         Unless calm hours are left out, each calm hour gets ``DIRECTIONS``
         consecutive states, one for each direction tried; calm hours of the
-        same stability and lid share them.
+        same stability share them.
 
     Returns
     -------
@@ -37,36 +37,51 @@ def weather_states(weather: WeatherHours, *, calms: CalmRule) -> WeatherStates:
     if calms == "leave-out":
         calm = calm[:0]
 
-    states, state_of = _distinct(
-        weather.wind_from[ordinary], weather.stability[ordinary], weather.mixing_height[ordinary]
-    )
+    states, state_of = _distinct(weather.wind_from[ordinary], weather.stability[ordinary])
     of_hour = np.full(weather.calm.size, -1, dtype=np.int64)
     of_hour[ordinary] = state_of
-
-    airs, air_of = _distinct(
-        np.zeros(calm.size), weather.stability[calm], weather.mixing_height[calm]
-    )
-    tried = np.arange(DIRECTIONS) * CALM_DIRECTION_STEP
-    calm_states = np.repeat(airs, DIRECTIONS, axis=0)
-    calm_states[:, 0] = np.tile(tried, len(airs))
-
-    every = np.concatenate([states, calm_states])
+    airs, air_of = _distinct(weather.stability[calm])
+    every = np.concatenate([states, _in_every_direction(airs)])
     return WeatherStates(
         wind_from=every[:, 0],
         stability=every[:, 1].astype(np.int64),
-        mixing_height=every[:, 2],
         of_hour=of_hour,
         calm_hours=calm,
         calm_first=len(states) + air_of * DIRECTIONS,
         directions=DIRECTIONS,
+        lids=_lid_states(weather, ordinary, calm),
     )
 
 
-def _distinct(
-    wind_from: FloatArray, stability: IntArray, mixing_height: FloatArray
-) -> tuple[FloatArray, IntArray]:
-    """Return the distinct rows (N, 3) and, for each input row, which one it is."""
-    rows = np.column_stack([wind_from, stability.astype(np.float64), mixing_height])
+def _lid_states(weather: WeatherHours, ordinary: IntArray, calm: IntArray) -> LidStates:
+    lid = weather.mixing_height
+    under, calm_under = ordinary[np.isfinite(lid[ordinary])], np.isfinite(lid[calm])
+    states, state_of = _distinct(weather.wind_from[under], weather.stability[under], lid[under])
+    of_hour = np.full(lid.size, -1, dtype=np.int64)
+    of_hour[under] = state_of
+    chosen = calm[calm_under]
+    airs, air_of = _distinct(weather.stability[chosen], lid[chosen])
+    calm_first = np.full(calm.size, -1, dtype=np.int64)
+    calm_first[calm_under] = len(states) + air_of * DIRECTIONS
+    every = np.concatenate([states, _in_every_direction(airs)])
+    return LidStates(
+        wind_from=every[:, 0],
+        stability=every[:, 1].astype(np.int64),
+        mixing_height=every[:, 2],
+        of_hour=of_hour,
+        calm_first=calm_first,
+    )
+
+
+def _in_every_direction(airs: FloatArray) -> FloatArray:
+    """Put each row (N, M) under every direction tried: (N DIRECTIONS, M + 1)."""
+    tried = np.tile(np.arange(DIRECTIONS) * CALM_DIRECTION_STEP, len(airs))
+    return np.column_stack([tried, np.repeat(airs, DIRECTIONS, axis=0)])
+
+
+def _distinct(*columns: FloatArray | IntArray) -> tuple[FloatArray, IntArray]:
+    """Return the distinct rows (N, M) and, for each input row, which one it is."""
+    rows = np.column_stack([np.asarray(column, dtype=np.float64) for column in columns])
     if len(rows) == 0:
         return rows, np.zeros(0, dtype=np.int64)
     distinct, index = np.unique(rows, axis=0, return_inverse=True)

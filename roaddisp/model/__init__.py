@@ -16,11 +16,13 @@ from __future__ import annotations
 
 from roaddisp.model.hours import (
     HourlyBlock,
+    LidStates,
     LinkStrengths,
     Responses,
     Segments,
     WeatherHours,
     WeatherStates,
+    looked_up,
 )
 from roaddisp.model.inputs import (
     Background,
@@ -84,11 +86,13 @@ __all__ = [
     "StationHours",
     "Study",
     "HourlyBlock",
+    "LidStates",
     "LinkStrengths",
     "Responses",
     "Segments",
     "WeatherHours",
     "WeatherStates",
+    "looked_up",
     "Result",
     "Statistics",
     "Verdicts",

@@ -5,6 +5,8 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import dataclass, replace
 
+import numpy as np
+
 from roaddisp.model.types import BoolArray, Float32Array, FloatArray, IntArray
 
 
@@ -99,12 +101,38 @@ class Segments:
 
 
 @dataclass(frozen=True)
-class WeatherStates:
-    """The distinct states among the hours: responses are computed once for each.
+class LidStates:
+    """States under a lid, to be computed only where the lid is felt.
 
     Attributes
     ----------
-    wind_from : (W,) [deg]; stability : (W,) int codes; mixing_height : (W,) [m]
+    wind_from : (V,) [deg]; stability : (V,) int codes; mixing_height : (V,) [m]
+        States of ordinary hours first, then those of calm hours.
+    of_hour : (T,) int
+        State of each hour, -1 without a lid.
+    calm_first : (Tc,) int
+        First of the consecutive states of each calm hour, -1 without a lid.
+    """
+
+    wind_from: FloatArray
+    stability: IntArray
+    mixing_height: FloatArray
+    of_hour: IntArray
+    calm_first: IntArray
+
+
+@dataclass(frozen=True)
+class WeatherStates:
+    """The distinct states among the hours: responses are computed once for each.
+
+    A lid is part of no state here: most pairs of receptor and road never feel it,
+    and an hourly lid would make every hour a state. What lids change is added from
+    ``lids``.
+
+    Attributes
+    ----------
+    wind_from : (W,) [deg]; stability : (W,) int codes
+        States of ordinary hours first, then those of calm hours.
     of_hour : (T,) int
         State of each hour, -1 in calm and missing hours.
     calm_hours : (Tc,) int
@@ -112,15 +140,16 @@ class WeatherStates:
     calm_first : (Tc,) int
         First of the ``directions`` consecutive states of each calm hour.
     directions : int
+    lids : LidStates
     """
 
     wind_from: FloatArray
     stability: IntArray
-    mixing_height: FloatArray
     of_hour: IntArray
     calm_hours: IntArray
     calm_first: IntArray
     directions: int
+    lids: LidStates
 
     def __len__(self) -> int:
         return len(self.wind_from)
@@ -128,13 +157,20 @@ class WeatherStates:
     def without_calms(self) -> WeatherStates:
         """Return the states of ordinary hours alone."""
         ordinary = int(self.of_hour.max(initial=-1)) + 1
+        under = int(self.lids.of_hour.max(initial=-1)) + 1
         return replace(
             self,
             wind_from=self.wind_from[:ordinary],
             stability=self.stability[:ordinary],
-            mixing_height=self.mixing_height[:ordinary],
             calm_hours=self.calm_hours[:0],
             calm_first=self.calm_first[:0],
+            lids=replace(
+                self.lids,
+                wind_from=self.lids.wind_from[:under],
+                stability=self.lids.stability[:under],
+                mixing_height=self.lids.mixing_height[:under],
+                calm_first=self.lids.calm_first[:0],
+            ),
         )
 
 
@@ -146,14 +182,33 @@ class Responses:
     ----------
     receptors : slice
         The block's place among the receptors of the run.
-    table : (W, K, G, R) float32 [g/m3]
-        Per unit of the group's shape.
+    table : (W + F, K, G, R) float32 [g/m3]
+        Per unit of the group's shape; after the W states without lids, the change
+        that each of the F lid states makes which some pair of the block feels.
     states : WeatherStates
+    lid_row : (V,) int
+        Row of each lid state in the table, -1 where no pair feels it.
     """
 
     receptors: slice
     table: Float32Array
     states: WeatherStates
+    lid_row: IntArray
+
+    def lid_of_hour(self) -> IntArray:
+        """(T,): row that an hour's lid adds, -1 for none."""
+        return looked_up(self.lid_row, self.states.lids.of_hour)
+
+    def lid_of_calm(self) -> IntArray:
+        """(Tc,): first of the rows that a calm hour's lid adds, -1 for none."""
+        return looked_up(self.lid_row, self.states.lids.calm_first)
+
+
+def looked_up(row: IntArray, index: IntArray) -> IntArray:
+    """Rows at the indices; -1 where an index is."""
+    padded = np.append(row, -1)
+    found: IntArray = padded[index]
+    return found
 
 
 @dataclass(frozen=True)

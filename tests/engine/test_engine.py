@@ -6,11 +6,14 @@ against adaptive quadrature, and from sums written out here.
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 import pytest
 
 from roaddisp.dispersion.reference import unit_concentration
 from roaddisp.engine.hours import Conversion, hours
+from roaddisp.engine.kept import keep, link_means, regrouped
 from roaddisp.engine.responses import responses
 from roaddisp.engine.states import DIRECTIONS, weather_states
 from roaddisp.model import (
@@ -206,11 +209,80 @@ def test_a_calm_hour_runs_in_the_direction_that_makes_most_no2(
 
 def test_states_are_distinct_and_shared(weather: WeatherHours) -> None:
     states = weather_states(weather, calms="both")
-    rows = np.column_stack([states.wind_from, states.stability, states.mixing_height])
+    rows = np.column_stack([states.wind_from, states.stability])
     ordinary = rows[: states.calm_first.min()]
     assert len(np.unique(ordinary, axis=0)) == len(ordinary)
     for hour in np.flatnonzero(~weather.calm & ~weather.missing):
-        own = (weather.wind_from[hour], weather.stability[hour], weather.mixing_height[hour])
+        own = (weather.wind_from[hour], weather.stability[hour])
         assert tuple(rows[states.of_hour[hour]]) == own
     assert states.directions == DIRECTIONS == 180
     assert (states.of_hour[weather.calm | weather.missing] == -1).all()
+
+
+def test_a_lid_is_no_state_of_its_own(weather: WeatherHours) -> None:
+    """Every hour has another lid; the states stay those of direction and class."""
+    lids = 100.0 + np.arange(HOURS)
+    under = weather_states(replace(weather, mixing_height=lids), calms="both")
+    free = weather_states(replace(weather, mixing_height=np.full(HOURS, np.inf)), calms="both")
+    assert len(under) == len(free)
+    blowing = ~weather.calm & ~weather.missing
+    np.testing.assert_array_equal(
+        under.lids.mixing_height[under.lids.of_hour[blowing]], lids[blowing]
+    )
+    assert len(free.lids.wind_from) == 0
+    assert (free.lids.of_hour == -1).all()
+
+
+def test_a_week_of_hourly_lids_is_the_integral_hour_by_hour(
+    segments: Segments, strengths: LinkStrengths, receptors: Receptors
+) -> None:
+    """Lids low enough to be felt within a kilometre in unstable air, another each hour."""
+    hours_of_week, rng = 168, np.random.default_rng(11)
+    none = np.zeros(hours_of_week, dtype=bool)
+    week = WeatherHours(
+        wind_from=rng.choice(np.arange(0.0, 360.0, 10.0), hours_of_week),
+        wind_speed=rng.uniform(1.0, 5.0, (2, hours_of_week)),
+        stability=rng.integers(0, 6, hours_of_week),
+        mixing_height=rng.uniform(60.0, 900.0, hours_of_week),
+        calm=none,
+        missing=none,
+        raised=none,
+        counts={},
+    )
+    shape = rng.uniform(0.2, 2.0, (1, 2, hours_of_week))
+    weekly = replace(strengths, shape=np.repeat(shape, 2, axis=0))
+    air = Background(o3=np.full(hours_of_week, 20.0), no2=np.full(hours_of_week, 5.0), no=None)
+    states = weather_states(week, calms="leave-out")
+    tables = list(responses(segments, weekly, receptors, states, terrain="open"))
+    felt = tables[0].lid_row >= 0
+    assert 0 < felt.sum() < felt.size, "some lids are felt and some are not"
+    assert len(states) < 216
+    (block,) = hours(tables, weekly, week, air, Conversion("ozone-limited", 1.8804))
+    for hour in range(hours_of_week):
+        nox = plain_hour(
+            segments,
+            weekly,
+            receptors,
+            hour,
+            wind_from=week.wind_from[hour],
+            wind_speed=week.wind_speed[:, hour],
+            weather=week,
+        )[0]
+        np.testing.assert_allclose(
+            block.nox_road_ugm3[:, hour], nox, rtol=1e-3, atol=1e-5 * nox.max()
+        )
+    kept = keep(
+        segments,
+        weekly,
+        receptors,
+        states,
+        chosen=tuple(range(len(receptors))),
+        terrain="open",
+        calms_at=np.ones(len(receptors), dtype=bool),
+        group=None,
+    )
+    tables = regrouped(kept, weekly)
+    (again,) = hours(tables, weekly, week, air, Conversion("ozone-limited", 1.8804))
+    np.testing.assert_allclose(again.nox_road_ugm3, block.nox_road_ugm3, rtol=2e-5, atol=1e-9)
+    shares = 1e6 * link_means(kept, weekly, week)[0].sum(axis=0)
+    np.testing.assert_allclose(shares, block.nox_road_ugm3.mean(axis=1), rtol=1e-5)
