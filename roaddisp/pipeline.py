@@ -12,6 +12,7 @@ from dataclasses import dataclass, field, replace
 
 import numpy as np
 
+from roaddisp.dispersion.compiling import using_threads
 from roaddisp.dispersion.kernel import needs_compiling
 from roaddisp.emissions.strength import link_strengths
 from roaddisp.engine.fold import Folded, fold
@@ -74,6 +75,7 @@ def run(
     scenario: str | None = None,
     progress: Progress | None = None,
     responses: KeptResponses | None = None,
+    threads: int | None = None,
 ) -> Result:
     """Run one scenario of a study.
 
@@ -89,6 +91,9 @@ def run(
         From `keep_responses`: the run is then of the receptors kept, and takes a
         blink. The heights of the sources are those of the kept responses; the
         record says by how much this study's differ.
+    threads : int, optional
+        Threads that share the work, at least 1; all processors where not given. The
+        numbers are the same, to the last bit.
 
     Returns
     -------
@@ -98,6 +103,8 @@ def run(
     ------
     StudyError
         Where the study has no such scenario, or kept responses do not fit it.
+    ValueError
+        Where fewer than one thread is asked for.
 
     Examples
     --------
@@ -110,7 +117,34 @@ def run(
     True
     >>> folder.cleanup()
     """
-    chosen = named_scenario(study, scenario or "base")
+    with using_threads(threads):
+        return _run(study, named_scenario(study, scenario or "base"), progress, responses)
+
+
+def run_all(
+    study: Study, *, progress: Progress | None = None, threads: int | None = None
+) -> dict[str, Result]:
+    """Run every scenario of a study; the first key is ``"base"``.
+
+    Parameters
+    ----------
+    study : Study
+    progress, threads
+        As in `run`.
+
+    Returns
+    -------
+    dict of str to Result
+    """
+    return {
+        name: run(study, scenario=name, progress=progress, threads=threads)
+        for name in study.scenarios
+    }
+
+
+def _run(
+    study: Study, chosen: Scenario, progress: Progress | None, responses: KeptResponses | None
+) -> Result:
     if responses is not None:
         chosen = only(chosen, responses.receptors)
     timer = Timer()
@@ -157,22 +191,6 @@ def run(
             "timings_s": timer.seconds,
         },
     )
-
-
-def run_all(study: Study, *, progress: Progress | None = None) -> dict[str, Result]:
-    """Run every scenario of a study; the first key is ``"base"``.
-
-    Parameters
-    ----------
-    study : Study
-    progress : callable, optional
-        As in `run`.
-
-    Returns
-    -------
-    dict of str to Result
-    """
-    return {name: run(study, scenario=name, progress=progress) for name in study.scenarios}
 
 
 def prepare(scenario: Scenario, timer: Timer) -> Prepared:

@@ -3,13 +3,19 @@
 from __future__ import annotations
 
 import csv
+import signal
+import subprocess
+import sys
 from collections.abc import Callable
+from concurrent.futures import ThreadPoolExecutor
 from pathlib import Path
 
 import numpy as np
 import pytest
+from typer.testing import CliRunner
 
 import roaddisp as rd
+from roaddisp.app.command import app
 from roaddisp.study.new import new_study
 
 Edit = Callable[[Path], None]
@@ -196,6 +202,73 @@ def test_progress_is_told(plain: rd.Result) -> None:
     rd.run(plain.study, progress=lambda *step: told.append(step))
     assert told[0][1] == 0
     assert told[-1][1] == told[-1][2] == len(plain.scenario.receptors)
+
+
+def test_threads_change_no_bit(plain: rd.Result) -> None:
+    for threads in (1, 2):
+        run = rd.run(plain.study, threads=threads)
+        for name in ("no2_ppb", "nox_road_ugm3"):
+            np.testing.assert_array_equal(run.hourly[name], plain.hourly[name])
+        assert run.summary.equals(plain.summary)
+    with pytest.raises(ValueError, match="threads: 0; allowed: 1 and more"):
+        rd.run(plain.study, threads=0)
+
+
+def test_runs_at_the_same_time_are_safe(plain: rd.Result) -> None:
+    """The threading layers of compiled code do not bear concurrent calls of themselves."""
+    with ThreadPoolExecutor(4) as pool:
+        runs = list(pool.map(lambda _: rd.run(plain.study), range(4)))
+    for run in runs:
+        assert run.summary.equals(plain.summary)
+
+
+def test_stopping_a_run_leaves_nothing(tmp_path: Path) -> None:
+    """Ctrl-C while receptors are worked on: a message, code 130, and no file."""
+    folder = tmp_path / "study"
+    new_study(folder)
+    replaced('spacing = "50 m"', 'spacing = "2 m"')(folder)
+    told = (
+        "import sys, roaddisp.pipeline as p\n"
+        "from roaddisp.app.command import main\n"
+        "told = p._told\n"
+        "def speaking(*a):\n"
+        "    for block in told(*a):\n"
+        "        print('at work', flush=True)\n"
+        "        yield block\n"
+        "p._told = speaking\n"
+        "main()\n"
+    )
+    with subprocess.Popen(
+        [sys.executable, "-c", told, "run", str(folder)],
+        stdout=subprocess.PIPE,
+        stderr=subprocess.PIPE,
+        text=True,
+    ) as process:
+        assert process.stdout is not None
+        assert process.stdout.readline() == "at work\n"
+        process.send_signal(signal.SIGINT)
+        _, err = process.communicate(timeout=60)
+    assert process.returncode == 130, err
+    assert "nothing was written" in err
+    assert not (folder / "out").exists()
+    assert not [path for path in folder.iterdir() if path.name.startswith(".")]
+
+
+def test_the_command_keeps_responses_in_a_file(tmp_path: Path, plain: rd.Result) -> None:
+    folder, file = tmp_path / "study", tmp_path / "kept.h5"
+    new_study(folder)
+    without_grid(folder)
+    for _ in range(2):
+        words = ["run", str(folder), "--responses", str(file), "--threads", "1"]
+        assert CliRunner().invoke(app, words).exit_code == 0
+        assert file.exists()
+        with (folder / "out" / "receptors.csv").open(encoding="utf-8") as table:
+            rows = list(csv.DictReader(table))
+        np.testing.assert_allclose(
+            [float(row["no2_mean_ppb"]) for row in rows],
+            plain.summary["no2_mean_ppb"],
+            rtol=1e-5,
+        )
 
 
 def test_the_record_counts_what_the_wind_went_through(plain: rd.Result) -> None:

@@ -6,6 +6,7 @@ from collections.abc import Mapping, Sequence
 
 import numpy as np
 
+from roaddisp.dispersion.compiling import using_threads
 from roaddisp.engine.hours import UGM3_PER_GM3
 from roaddisp.engine.kept import KeptResponses, keep, link_means
 from roaddisp.model import FloatArray, IntArray, Study
@@ -18,6 +19,7 @@ def keep_responses(
     scenario: str | None = None,
     receptors: Sequence[str] | None = None,
     groups: Mapping[str, str] | None = None,
+    threads: int | None = None,
 ) -> KeptResponses:
     """Compute what receptors see of the roads, to be kept for what-if.
 
@@ -31,6 +33,8 @@ def keep_responses(
     groups : mapping of link to group name, optional
         Links that will change together. Where not given every link is kept apart,
         which any change of traffic may follow; groups take less memory.
+    threads : int, optional
+        As in `run`.
 
     Returns
     -------
@@ -42,7 +46,8 @@ def keep_responses(
     StudyError
         Where the study has no such scenario.
     ValueError
-        Where a receptor or a link is unknown or missing.
+        Where a receptor or a link is unknown or missing, or the responses would take
+        more than 4 GiB.
 
     Examples
     --------
@@ -61,16 +66,17 @@ def keep_responses(
     chosen = tuple(range(len(names))) if receptors is None else _places(receptors, names)
     part = only(whole, chosen)
     ready = prepare(part, Timer())
-    return keep(
-        ready.segments,
-        ready.strengths,
-        part.receptors,
-        ready.states,
-        chosen=chosen,
-        terrain=part.options.terrain,
-        calms_at=calms_at(part),
-        group=None if groups is None else _link_groups(groups, part.network.link),
-    )
+    with using_threads(threads):
+        return keep(
+            ready.segments,
+            ready.strengths,
+            part.receptors,
+            ready.states,
+            chosen=chosen,
+            terrain=part.options.terrain,
+            calms_at=calms_at(part),
+            group=None if groups is None else _link_groups(groups, part.network.link),
+        )
 
 
 def link_contributions(

@@ -7,12 +7,16 @@ import sys
 from collections.abc import Callable, Iterator
 from contextlib import contextmanager
 from pathlib import Path
-from typing import Annotated
+from typing import TYPE_CHECKING, Annotated
 
 import typer
 
 from roaddisp.app.guard import NOT_MET, guarded
 from roaddisp.app.options import JsonOption, StudyArgument
+
+if TYPE_CHECKING:
+    from roaddisp.engine.kept import KeptResponses
+    from roaddisp.model import Study
 
 
 @guarded
@@ -24,6 +28,17 @@ def command(
     out: Annotated[
         Path | None,
         typer.Option(metavar="DIR", help="Where the files go; default STUDY/out."),
+    ] = None,
+    responses: Annotated[
+        Path | None,
+        typer.Option(
+            metavar="FILE",
+            help="Keep the responses in FILE and use them again: a run after a change of "
+            "traffic, fleet, factors or background then takes a moment.",
+        ),
+    ] = None,
+    threads: Annotated[
+        int | None, typer.Option(metavar="N", min=1, help="Threads; default all processors.")
     ] = None,
     gate: Annotated[
         bool, typer.Option("--gate", help="End with 1 where a standard is not met.")
@@ -44,7 +59,8 @@ def command(
 
     read = read_study(study)
     with _progress_bar() as progress:
-        result = run(read, scenario=scenario, progress=progress)
+        kept = None if responses is None else _kept(responses, read, scenario, threads)
+        result = run(read, scenario=scenario, progress=progress, responses=kept, threads=threads)
         progress("writing", 0, 1)
         written = result.write(out if out is not None else read.folder / "out")
         progress("writing", 1, 1)
@@ -56,6 +72,18 @@ def command(
         typer.echo(f"{len(written)} files in {written[0].parent}")
     if gate and any("no" in verdict.met for verdict in result.verdicts):
         raise typer.Exit(NOT_MET)
+
+
+def _kept(file: Path, study: Study, scenario: str | None, threads: int | None) -> KeptResponses:
+    """Read kept responses, or compute and keep them where there is no file yet."""
+    from roaddisp.analysis.what_if import keep_responses
+    from roaddisp.engine.kept_file import read_responses, write_responses
+
+    if file.exists():
+        return read_responses(file)
+    kept = keep_responses(study, scenario=scenario, threads=threads)
+    write_responses(kept, file)
+    return kept
 
 
 @contextmanager

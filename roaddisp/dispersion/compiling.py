@@ -11,7 +11,8 @@ import hashlib
 import os
 import tempfile
 import threading
-from collections.abc import Callable
+from collections.abc import Callable, Iterator
+from contextlib import contextmanager
 from pathlib import Path
 from typing import Any, Final, ParamSpec, TypeVar
 
@@ -58,6 +59,33 @@ def _jit(function: Callable[P, T], **options: Any) -> Callable[P, T]:
     finally:
         settings.CACHE_DIR = standing
     return made
+
+
+@contextmanager
+def using_threads(wanted: int | None) -> Iterator[None]:
+    """Let compiled code of this thread share its work among so many threads.
+
+    Parameters
+    ----------
+    wanted : int or None
+        None leaves all that numba was started with; more than those are not to be had.
+
+    Raises
+    ------
+    ValueError
+        Where fewer than 1 are wanted.
+    """
+    if wanted is None:
+        yield
+        return
+    if wanted < 1:
+        raise ValueError(f"threads: {wanted}; allowed: 1 and more, or None for all")
+    standing, settings = numba.get_num_threads(), vars(numba.config)
+    numba.set_num_threads(min(wanted, int(settings["NUMBA_NUM_THREADS"])))
+    try:
+        yield
+    finally:
+        numba.set_num_threads(standing)
 
 
 def is_kept(function: Callable[..., Any]) -> bool:

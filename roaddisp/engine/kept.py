@@ -37,6 +37,9 @@ from roaddisp.model import (
 SCHEME: Final = 1
 """Changes with any change that moves a response: files of another scheme are refused."""
 
+LARGEST: Final = 4 * 2**30
+"""Bytes of responses that are kept at most."""
+
 
 @dataclass(frozen=True)
 class KeptBlock:
@@ -155,9 +158,23 @@ def keep(
         release_height=strengths.release_height,
         sigma_z0=strengths.sigma_z0,
         states=states,
-        blocks=tuple(_rows(table, len(states)) for table in tables),
+        blocks=_within_memory(_rows(table, len(states)) for table in tables),
         fingerprint=fingerprint(segments, receptors, states, terrain),
     )
+
+
+def _within_memory(blocks: Iterator[KeptBlock]) -> tuple[KeptBlock, ...]:
+    kept: list[KeptBlock] = []
+    size = 0
+    for block in blocks:
+        kept.append(block)
+        size += block.values.nbytes
+        if size > LARGEST:
+            raise ValueError(
+                f"the responses would take more than {LARGEST / 2**30:.0f} GiB; keep them for "
+                "fewer receptors, or for groups of links that change together"
+            )
+    return tuple(kept)
 
 
 def _rows(response: Responses, all_states: int) -> KeptBlock:
