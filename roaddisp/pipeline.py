@@ -13,7 +13,6 @@ from dataclasses import dataclass, field, replace
 import numpy as np
 
 from roaddisp.dispersion.compiling import using_threads
-from roaddisp.dispersion.kernel import needs_compiling
 from roaddisp.emissions.strength import link_strengths
 from roaddisp.engine.fold import Folded, fold
 from roaddisp.engine.hours import Conversion, hours
@@ -320,11 +319,10 @@ def _told(
 ) -> Iterator[HourlyBlock]:
     """Hand blocks on and say how far they are."""
     say = progress or (lambda *_: None)
-    stage = "compiling once, then receptors" if needs_compiling() else "receptors"
-    say(stage, 0, total)
+    say("receptors", 0, total)
     for block in blocks:
         yield block
-        say(stage, block.receptors.stop, total)
+        say("receptors", block.receptors.stop, total)
 
 
 def calms_at(scenario: Scenario) -> BoolArray:

@@ -54,10 +54,13 @@ def command(
     Example: roaddisp run examples/larch_field --out results
     """
     from roaddisp.app.summary import summary_data, summary_text
+    from roaddisp.dispersion.kernel import needs_compiling
     from roaddisp.pipeline import run
     from roaddisp.study.read import read_study
 
     read = read_study(study)
+    if needs_compiling():
+        typer.echo("Compiling the inner loops, once after installation: some 20 s.", err=True)
     with _progress_bar() as progress:
         kept = None if responses is None else _kept(responses, read, scenario, threads)
         result = run(read, scenario=scenario, progress=progress, responses=kept, threads=threads)
