@@ -10,8 +10,8 @@ from roaddisp.emissions.factors import built_in_factors
 from roaddisp.model import BoolArray, Counts, FactorTable, Fleet, FloatArray, Network
 from roaddisp.study.columns import TableView
 from roaddisp.study.problems import Problems, listed, nearest
-from roaddisp.study.table_types import CLASSES, HEAVY_CLASSES, LIGHT_CLASSES
-from roaddisp.traffic.fleet import WITHOUT_MIX, fleet_without_mix
+from roaddisp.study.table_types import CLASSES, LIGHT_CLASSES
+from roaddisp.traffic.fleet import HEAVY_CLASSES, WITHOUT_MIX, fleet_without_mix
 
 _SUM = 1e-3
 _SLACK = 1e-6

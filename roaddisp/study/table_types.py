@@ -5,22 +5,13 @@ from __future__ import annotations
 from dataclasses import dataclass
 from typing import Final
 
+from roaddisp.traffic.fleet import HEAVY_CLASSES
+
 LAYER: Final = "GeoPackage, GeoJSON, Shapefile or FlatGeobuf"
 """The forms a vector layer may have."""
 
 DAY_TYPES: Final = ("weekday", "saturday", "sunday")
-KINDS: Final = (
-    "classroom",
-    "playground",
-    "home",
-    "facade",
-    "intake",
-    "roadside",
-    "vegetation",
-    "grid",
-)
 LIGHT_CLASSES: Final = ("car", "van", "motorcycle")
-HEAVY_CLASSES: Final = ("bus", "rigid_truck", "articulated_truck")
 CLASSES: Final = (*LIGHT_CLASSES, *HEAVY_CLASSES)
 
 

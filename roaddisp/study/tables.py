@@ -8,7 +8,8 @@ from __future__ import annotations
 
 from typing import Final
 
-from roaddisp.study.table_types import KINDS, LAYER, Column, Table
+from roaddisp.standards.rules import KINDS
+from roaddisp.study.table_types import LAYER, Column, Table
 from roaddisp.study.traffic_columns import COUNTS, FACTORS, MIX, PROFILES, ROADS
 
 WEATHER: Final = Table(
