@@ -8,9 +8,10 @@ Every number is float32: a float64 constant would widen the arithmetic.
 
 from __future__ import annotations
 
-from typing import Final
+from typing import Final, NamedTuple
 
 import numpy as np
+import numpy.typing as npt
 
 from roaddisp.model import Float32Array
 
@@ -18,8 +19,11 @@ f32 = np.float32
 
 BLOCK: Final = 1024
 """Most receptors in a block: the scratch columns then stay in a near cache."""
-ROOM: Final = 2 * BLOCK
-"""Length of a column: long lines are split, and each part takes a place."""
+LANES: Final = 8
+"""Numbers in a vector register; loops run over whole registers, the last one part filled."""
+ROOM: Final = 2 * BLOCK + 208
+"""Length of a column: long lines are split, and each part takes a place. Not a power of
+two, which would have all columns share a few lines of the cache."""
 
 # Columns are unsigned, and so are indices into them: no vector loop can be made of an
 # index that might count from the end.
@@ -27,28 +31,26 @@ u64 = np.uint64
 
 # A block's pairs with one segment
 GAP_X, GAP_Y, START, END, Z = (u64(ROOM * column) for column in range(5))
-# ... in one state: offsets at the nearest point, the stretch of line upwind
-DOWN, CROSS, FIRST, LIVE = (u64(ROOM * column) for column in range(5, 9))
+# ... in one wind direction: offsets at the nearest point, the stretch of line upwind
+DOWN, CROSS, FIRST, LAST = (u64(ROOM * column) for column in range(5, 9))
 # Pairs that live: the same, taken over
-L_DOWN, L_CROSS, L_FIRST, L_LAST, L_Z, WANTED = (u64(ROOM * column) for column in range(9, 15))
+L_DOWN, L_CROSS, L_FIRST, L_LAST, L_Z = (u64(ROOM * column) for column in range(9, 14))
+# ... in one state: the stretch inside the plume, its point of least c/sigma_y and that squared
+IN_FIRST, IN_LAST, MIDDLE, LEAST = (u64(ROOM * column) for column in range(14, 18))
 # What the sum needs, in order of arrival (C_), then by number of nodes
 FIELDS: Final = 8
-C_D_LO, C_D_SPAN, C_C_LO, C_C_SPAN, C_MEASURE, C_KEEP, C_APART, C_MIRROR = (
-    u64(ROOM * column) for column in range(15, 15 + FIELDS)
+C_D_LO, C_D_SPAN, C_C_LO, C_C_SPAN, C_MEASURE, C_FALL, C_APART, C_MIRROR = (
+    u64(ROOM * column) for column in range(18, 18 + FIELDS)
 )
-D_LO, D_SPAN, C_LO, C_SPAN, MEASURE, KEEP, APART, MIRROR = (
-    u64(ROOM * column) for column in range(15 + FIELDS, 15 + 2 * FIELDS)
+D_LO, D_SPAN, C_LO, C_SPAN, MEASURE, FALL, APART, MIRROR = (
+    u64(ROOM * column) for column in range(18 + FIELDS, 18 + 2 * FIELDS)
 )
-SUM: Final = u64(ROOM * (15 + 2 * FIELDS))
-COLUMNS: Final = 15 + 2 * FIELDS + 1
+SUM, S_Z, WAVE = (u64(ROOM * column) for column in range(18 + 2 * FIELDS, 21 + 2 * FIELDS))
+COLUMNS: Final = 21 + 2 * FIELDS
 
 RULES: Final = (1, 2, 3, 4, 5, 6, 8, 10, 13, 17, 24, 36)
 KINDS: Final = len(RULES)
 MOST_NODES: Final = RULES[-1]
-KIND_OF: Final = np.array(
-    [next(kind for kind, rule in enumerate(RULES) if rule >= n) for n in range(MOST_NODES + 1)]
-)
-"""For a wanted number of nodes, which rule has at least as many."""
 
 
 def _unit_rules() -> tuple[Float32Array, Float32Array]:
@@ -77,12 +79,20 @@ FARTHEST: Final = f32(40.0)
 PI: Final = f32(np.pi)
 PER_CIRCLE: Final = f32(0.5 / np.pi)
 
-# exp(x) = 2^k exp(r), r = x - k ln 2 with ln 2 in two parts (Cody and Waite)
-LOWEST_EXPONENT: Final = f32(-80.0)
+# 2^y = 2^k 2^f, k the whole number nearest to y, which y + MAGIC has in its last bits
+LOWEST_POWER: Final = f32(-120.0)
+MAGIC: Final = f32(1.5 * 2.0**23)
+P4, P3, P2, P1, P0 = (
+    f32(0.00966636851541977),
+    f32(0.05592197584225692),
+    f32(0.24022349038020616),
+    f32(0.6931210452034275),
+    f32(0.9999999999999982),
+)
+"""2^f for |f| <= 1/2 to 3e-6, interpolated at Chebyshev's points."""
 PER_LN2: Final = f32(1.4426950408889634)
-LN2_HIGH: Final = f32(0.693359375)
-LN2_LOW: Final = f32(-2.12194440e-4)
-E6, E5, E4, E3 = f32(1.0 / 720.0), f32(1.0 / 120.0), f32(1.0 / 24.0), f32(1.0 / 6.0)
+HALF_PER_LN2: Final = f32(0.5 * 1.4426950408889634)
+ROOT_HALF_PER_LN2: Final = f32(np.sqrt(0.5 * 1.4426950408889634))
 BIAS: Final = np.int32(127)
 MANTISSA: Final = np.int32(23)
 FRACTION: Final = np.int32(0x7FFFFF)
@@ -107,6 +117,37 @@ LIFTED: Final = f32(1.5)
 """|z - h|/sigma_z0 from which height shapes the integrand."""
 RISES: Final = f32(4.0)
 """sigma_z0/a of sigma_z, times this: most that delta may be."""
+
+CountArray = npt.NDArray[np.int32]
+"""Flags, places in a block, rules: whole numbers as wide as float32."""
+
+
+class Work(NamedTuple):
+    """What one thread works in: a block's columns and lists of whole numbers."""
+
+    scratch: Float32Array
+    owner: CountArray
+    """Place in the table of each pair's receptor."""
+    live: CountArray
+    """For each pair that lives, which of the block's pairs it is."""
+    flag: CountArray
+    kind: CountArray
+    """Rule of each line; from `KINDS` on, under a lid."""
+    place: CountArray
+    """Where `sort` has put each line."""
+    begin: CountArray
+    """Where each kind begins."""
+
+
+class Line(NamedTuple):
+    """A segment in one wind direction: d' and c' along it, initial spreads, source height."""
+
+    d_rate: f32
+    c_rate: f32
+    sy0: f32
+    sz0: f32
+    h: f32
+
 
 Curve = tuple[f32, f32, f32, f32, f32, f32]
 """a and b of the crosswind curve, then e1, e2, a^2 and g of the vertical one:

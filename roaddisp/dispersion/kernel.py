@@ -21,6 +21,11 @@ LEAST_BLOCK: Final = 32
 BLOCKS_WANTED: Final = 16
 """Few receptors are cut into this many blocks, so that threads have work to share."""
 
+BLOCKS_TOGETHER: Final = 8
+"""Blocks in one call of the compiled code, at least: enough to share among threads."""
+PAIRS_AT_ONCE: Final = 25_000_000
+"""Pairs times states in one call: some 0.2 s of one thread's work."""
+
 
 def response_table(
     receptors: npt.ArrayLike,
@@ -201,48 +206,63 @@ def windowed_table(
     ... )[0, 0, 0].round(2).tolist()
     [0.0, 0.3100000023841858]
     """
-    if touched_only:
-        under, free = (
-            windowed_table(
-                receptors, ends, wind_from=wind_from, stability_codes=stability_codes,
-                strength=strength, group=group, n_groups=n_groups, terrain=terrain,
-                height=height, sigma_z0=sigma_z0, sigma_y0=sigma_y0, mixing_height=lid,
-                piece=piece, near=near, far=far, across_only=across_only, threads=threads,
-            )
-            for lid in (mixing_height, np.full(len(wind_from), np.inf))
-        )  # fmt: skip
-        return np.asarray(under - free, dtype=np.float32)
     if threads is not None and threads < 1:
         raise ValueError(f"threads: {threads}; allowed: 1 and more, or None for all")
     _within("stability_codes", stability_codes, 6)
     _within("group", group, n_groups)
-    points = _copy(receptors)
-    table = np.zeros((len(wind_from), len(strength), n_groups, len(points)), dtype=np.float32)
-    if table.size == 0 or len(ends) == 0:
+    table = np.zeros((len(wind_from), len(strength), n_groups, len(receptors)), dtype=np.float32)
+    codes, curves = (
+        np.array(stability_codes, dtype=np.int64),
+        _rational(coefficients(terrain)),
+    )
+    states, turns = _by_direction(wind_from, curves[codes, 0])
+    if touched_only:
+        states = np.flatnonzero(np.isfinite(mixing_height)).astype(np.int64)
+        turns = np.arange(len(states) + 1)
+    if table.size == 0 or len(ends) == 0 or len(states) == 0:
         return table
-    size = min(BLOCK, max(LEAST_BLOCK, -(-len(points) // BLOCKS_WANTED)))
-    with ONE_AT_A_TIME, _threads(threads), numba.parallel_chunksize(1):
-        stages.fill_table(
-            table,
-            points,
-            _along_curve(points[:, :2]),
-            size,
-            _copy(ends),
-            _copy(piece),
-            _copy(near),
-            _copy(far),
-            np.radians(_copy(wind_from)),
-            np.array(stability_codes, dtype=np.int64),
-            _copy(mixing_height),
-            _rational(coefficients(terrain)),
-            np.array(strength, dtype=np.float32, order="C"),
-            np.array(group, dtype=np.int64),
-            _copy(height),
-            _copy(sigma_z0),
-            _copy(sigma_y0),
-            across_only,
-        )
+    order = _along_curve(receptors[:, :2])
+    size = min(BLOCK, max(LEAST_BLOCK, -(-len(receptors) // BLOCKS_WANTED)))
+    points = _copy(receptors)[order]
+    ends, piece, near, far = _copy(ends), _copy(piece), _copy(near), _copy(far)
+    directions, lid = np.radians(_copy(wind_from)), _copy(mixing_height)
+    amount = np.array(strength, dtype=np.float32, order="C")
+    group = np.array(group, dtype=np.int64)
+    height, sigma_z0, sigma_y0 = _copy(height), _copy(sigma_z0), _copy(sigma_y0)
+    for part in _parts(len(receptors), size, len(ends), len(states)):
+        with ONE_AT_A_TIME, _threads(threads), numba.parallel_chunksize(1):
+            stages.fill_table(
+                table, points, size, *part, ends, piece, near, far, states, turns, directions,
+                codes, lid, curves, amount, group, height, sigma_z0, sigma_y0,
+                across_only, touched_only,
+            )  # fmt: skip
+    for row in table.reshape(-1, len(receptors)):
+        row[order] = row.copy()
     return table
+
+
+def _parts(
+    receptors: int, size: int, segments: int, states: int
+) -> Iterator[tuple[int, int, int, int]]:
+    """Cut the work into calls that end soon, so that a run can be stopped between them.
+
+    Gives first and last block, first and last segment. A receptor meets the segments
+    in their order.
+    """
+    blocks = -(-receptors // size)
+    together = min(blocks, max(BLOCKS_TOGETHER, PAIRS_AT_ONCE // (size * states)))
+    some = max(1, PAIRS_AT_ONCE // (together * size * states))
+    for block in range(0, blocks, together):
+        for segment in range(0, segments, some):
+            last = min(block + together, blocks), min(segment + some, segments)
+            yield block, last[0], segment, last[1]
+
+
+def _by_direction(wind_from: FloatArray, widths: Float32Array) -> tuple[IntArray, IntArray]:
+    """Order of states by direction, the widest plume first, and where directions begin."""
+    states = np.lexsort((-widths, wind_from)).astype(np.int64)
+    turns = np.flatnonzero(np.diff(wind_from[states], prepend=np.nan) != 0.0)
+    return states, np.append(turns, len(states)).astype(np.int64)
 
 
 @contextmanager
@@ -281,7 +301,12 @@ def _rational(curves: FloatArray) -> Float32Array:
     """
     table = np.zeros((len(curves), 6), dtype=np.float32)
     for row, ((a, b, _), (az, bz, pz)) in enumerate(curves):
-        falls = {-1.0: (2.0 * bz, bz * bz), -0.5: (bz, 0.0), 0.0: (0.0, 0.0), 0.5: (0.0, 0.0)}
+        falls = {
+            -1.0: (2.0 * bz, bz * bz),
+            -0.5: (bz, 0.0),
+            0.0: (0.0, 0.0),
+            0.5: (0.0, 0.0),
+        }
         table[row] = (a, b, *falls[pz], az * az, bz if pz == 0.5 else 0.0)
     return table
 
@@ -291,7 +316,12 @@ def _along_curve(plan: FloatArray) -> IntArray:
     low = plan.min(axis=0)
     span = max(float((plan.max(axis=0) - low).max()), 1.0)
     cell = ((plan - low) * (65535.0 / span)).astype(np.uint64)
-    for shift, mask in ((8, 0x00FF00FF), (4, 0x0F0F0F0F), (2, 0x33333333), (1, 0x55555555)):
+    for shift, mask in (
+        (8, 0x00FF00FF),
+        (4, 0x0F0F0F0F),
+        (2, 0x33333333),
+        (1, 0x55555555),
+    ):
         cell = (cell | (cell << np.uint64(shift))) & np.uint64(mask)
     place = cell[:, 0] | (cell[:, 1] << np.uint64(1))
     return np.argsort(place, kind="stable").astype(np.int64)

@@ -20,71 +20,72 @@ from roaddisp.dispersion.columns import (
     C_C_SPAN,
     C_D_LO,
     C_D_SPAN,
-    C_KEEP,
+    C_FALL,
     C_LO,
     C_MEASURE,
     C_MIRROR,
     C_SPAN,
     D_LO,
     D_SPAN,
-    E3,
-    E4,
-    E5,
-    E6,
+    FALL,
     FARTHEST,
-    FIELDS,
     FRACTION,
     HALF,
-    KEEP,
-    KIND_OF,
+    HALF_PER_LN2,
+    IN_FIRST,
+    IN_LAST,
     KINDS,
     L_CROSS,
     L_DOWN,
-    L_FIRST,
-    L_LAST,
     L_Z,
-    LEAST_DELTA,
-    LID_REACH,
-    LN2_HIGH,
-    LN2_LOW,
-    LOWEST_EXPONENT,
+    LOWEST_POWER,
+    MAGIC,
     MANTISSA,
     MEASURE,
     MIRROR,
-    MOST_NODES,
     NODES,
     ONE,
+    P0,
+    P1,
+    P2,
+    P3,
+    P4,
     PER_LN2,
     PI,
     RISES,
-    ROOM,
+    ROOT_HALF_PER_LN2,
     RULE_SIZE,
+    RULES,
+    S_Z,
     SLOPE_SHORT,
     STEEP_FROM,
     SUM,
     TINY,
     TWO,
     ULP,
-    WANTED,
+    WAVE,
     WEIGHTS,
     ZERO,
     Curve,
+    Line,
+    Work,
     f32,
     u64,
 )
 from roaddisp.dispersion.compiling import fast_compiled
-from roaddisp.model import Float32Array, FloatArray, IntArray
+from roaddisp.dispersion.reach import feels_lid, scale, whole
+from roaddisp.model import Float32Array
 
 
 @fast_compiled
-def exponential(x: f32) -> f32:
-    """e^x for x <= 0 in vector instructions, to 3e-7; nothing is lost below -80."""
-    x = x if x > LOWEST_EXPONENT else LOWEST_EXPONENT
-    power = np.int32(x * PER_LN2 - HALF)
-    whole = f32(power)
-    r = x - whole * LN2_HIGH - whole * LN2_LOW
-    series = ((((E6 * r + E5) * r + E4) * r + E3) * r + HALF) * r + ONE
-    return (series * r + ONE) * np.int32((power + BIAS) << MANTISSA).view(np.float32)
+def power_of_two(y: f32) -> f32:
+    """2^y for y <= 0 in vector instructions, to 4e-6; nothing is lost below -120."""
+    y = max(LOWEST_POWER, y)
+    shifted = y + MAGIC
+    f = y - (shifted - MAGIC)
+    series = (((P4 * f + P3) * f + P2) * f + P1) * f + P0
+    power = np.int32(np.float32(shifted).view(np.int32) << MANTISSA)
+    return np.int32(np.float32(series).view(np.int32) + power).view(np.float32)
 
 
 @fast_compiled
@@ -98,39 +99,46 @@ def logarithm(x: f32) -> f32:
 
 @fast_compiled
 def _capped(t: f32) -> f32:
-    low = t if t > -FARTHEST else -FARTHEST
-    capped = low if low < FARTHEST else FARTHEST
-    return capped  # noqa: RET504 - a conditional return would keep the loop from vectors
+    low = max(-FARTHEST, t)
+    return min(FARTHEST, low)
 
 
 @fast_compiled
-def stretch(
-    scratch: Float32Array, n: int, d_rate: f32, c_rate: f32, sy0: f32, sz0: f32, h: f32,
-    curve: Curve,
-) -> None:  # fmt: skip
-    """Map each line onto (0, 1) and say how many nodes it wants.
+def _rule(wanted: f32) -> np.int32:
+    """First rule with at least so many nodes: the number of those that have fewer."""
+    return np.int32(
+        np.int32(wanted > f32(RULES[0])) + np.int32(wanted > f32(RULES[1]))
+        + np.int32(wanted > f32(RULES[2])) + np.int32(wanted > f32(RULES[3]))
+        + np.int32(wanted > f32(RULES[4])) + np.int32(wanted > f32(RULES[5]))
+        + np.int32(wanted > f32(RULES[6])) + np.int32(wanted > f32(RULES[7]))
+        + np.int32(wanted > f32(RULES[8])) + np.int32(wanted > f32(RULES[9]))
+        + np.int32(wanted > f32(RULES[10]))
+    )  # fmt: skip
 
+
+@fast_compiled
+def stretch(work: Work, n: int, line: Line, curve: Curve) -> None:
+    """Map each line onto (0, 1) and choose its rule.
+
+    Exponents are of 2 from here on, so offsets are scaled by sqrt(1 / (2 ln 2)).
     With delta the distance at which the plume's growth begins to count, nodes are
     even in 1/(d + delta): one rule from crosswind to parallel wind.
     """
+    scratch, kind = work.scratch, work.kind
+    d_rate, c_rate, sy0, sz0, h = line
     a, _, e1, e2, az_squared, g = curve
     a_squared, sy0_squared, sz0_squared = a * a, sy0 * sy0, sz0 * sz0
     per_a, most_delta = ONE / a, RISES * sz0 / np.sqrt(az_squared)
-    for j in range(u64(n)):
+    for j in range(u64(whole(n))):
         d, c, z = scratch[L_DOWN + j], scratch[L_CROSS + j], scratch[L_Z + j]
-        lo, hi = scratch[L_FIRST + j], scratch[L_LAST + j]
+        lo, hi = scratch[IN_FIRST + j], scratch[IN_LAST + j]
         apart = (z - h) * (z - h)
         length = hi - lo if hi > lo else ZERO
         d_lo = d + lo * d_rate
-        d_lo = d_lo if d_lo > ZERO else ZERO
+        d_lo = max(ZERO, d_lo)
         d_hi = d_lo + length * d_rate
         c_lo, c_hi = c + lo * c_rate, c + hi * c_rate
-        side_lo, side_hi = abs(c_lo), abs(c_hi)
-        c_least = side_lo if side_lo < side_hi else side_hi
-        c_least = ZERO if c_lo * c_hi <= ZERO else c_least
-        delta = np.sqrt(sy0_squared + c_least * c_least) * per_a
-        delta = delta if delta < most_delta else most_delta
-        delta = delta if delta > LEAST_DELTA else LEAST_DELTA
+        delta = scale(c_lo, c_hi, sy0_squared, per_a, most_delta)
         keep = (d_lo + delta) / (d_hi + delta)
         half_way = keep / (ONE + keep)
         d_mid = d_lo + (d_hi - d_lo) * half_way
@@ -141,10 +149,10 @@ def stretch(
         t_hi = _capped(c_hi / np.sqrt(sy0_squared + a_squared * d_hi * d_hi + TINY))
         path = abs(t_mid - t_lo) + abs(t_hi - t_mid)
         e_lo, e_mid, e_hi = HALF * t_lo * t_lo, HALF * t_mid * t_mid, HALF * t_hi * t_hi
-        e_most = e_lo if e_lo > e_hi else e_hi
-        e_most = e_most if e_most > e_mid else e_mid
-        e_least = e_lo if e_lo < e_hi else e_hi
-        e_least = e_least if e_least < e_mid else e_mid
+        e_most = max(e_hi, e_lo)
+        e_most = max(e_mid, e_most)
+        e_least = min(e_hi, e_lo)
+        e_least = min(e_mid, e_least)
         fall = e_most - e_least
         steep = fall - STEEP_FROM if fall > STEEP_FROM else ZERO
         sz_lo = sz0_squared + az_squared * d_lo * d_lo * (ONE + g * d_lo) / (
@@ -162,118 +170,154 @@ def stretch(
         long, short = BASE + need, BASE_SHORT + SLOPE_SHORT * need
 
         scratch[C_D_LO + j] = d_lo
-        scratch[C_D_SPAN + j] = d_hi - d_lo
-        scratch[C_C_LO + j] = c_lo
-        scratch[C_C_SPAN + j] = c_hi - c_lo
+        scratch[C_D_SPAN + j] = (d_hi - d_lo) * keep
+        scratch[C_C_LO + j] = ROOT_HALF_PER_LN2 * c_lo
+        scratch[C_C_SPAN + j] = ROOT_HALF_PER_LN2 * (c_hi - c_lo) * keep
         scratch[C_MEASURE + j] = length * keep
-        scratch[C_KEEP + j] = keep
-        scratch[C_APART + j] = HALF * apart
-        scratch[C_MIRROR + j] = TWO * z * h
-        scratch[WANTED + j] = long if long < short else short
+        scratch[C_FALL + j] = ONE - keep
+        scratch[C_APART + j] = HALF_PER_LN2 * apart
+        scratch[C_MIRROR + j] = PER_LN2 * TWO * z * h
+        kind[j] = _rule(min(short, long))
 
 
 @fast_compiled
-def _feels_lid(scratch: Float32Array, j: int, h: f32, sz0: f32, lid: f32, curve: Curve) -> bool:
-    """Whether the first image in the lid reaches the receptor from the line's far end."""
-    d = scratch[C_D_LO + j] + scratch[C_D_SPAN + j]
-    _, _, e1, e2, az_squared, g = curve
-    sz_squared = sz0 * sz0 + az_squared * d * d * (ONE + g * d) / (ONE + d * (e1 + e2 * d))
-    return bool(TWO * lid - scratch[L_Z + j] - h < LID_REACH * np.sqrt(sz_squared))
+def mark_lid(work: Work, n: int, line: Line, lid: f32, curve: Curve) -> None:
+    """Send pairs whose lid is felt at the line's far end to a rule for it, two steps finer.
+
+    A receptor above the lid gets nothing.
+    """
+    scratch, kind, sz0, h = work.scratch, work.kind, line.sz0, line.h
+    for j in range(u64(n)):
+        z = scratch[L_Z + j]
+        if z > lid:
+            scratch[C_MEASURE + j] = ZERO
+        elif feels_lid(_far_end(scratch, j), z, h, sz0, lid, curve):
+            kind[j] = np.int32(KINDS + min(kind[j] + 2, KINDS - 1))
 
 
 @fast_compiled
-def sort(
-    scratch: Float32Array, live: IntArray, kind: IntArray, begin: IntArray, sorted_: IntArray,
-    n: int, h: f32, sz0: f32, lid: f32, curve: Curve,
-) -> None:  # fmt: skip
-    """Bring pairs of one rule together; those the lid touches come last, a rule finer."""
+def mark_touched(work: Work, n: int, line: Line, lid: f32, curve: Curve) -> None:
+    """Let only those pairs count that feel the lid or have an end above it."""
+    scratch, sz0, h = work.scratch, line.sz0, line.h
+    for j in range(u64(n)):
+        z = scratch[L_Z + j]
+        felt = feels_lid(_far_end(scratch, j), z, h, sz0, lid, curve)
+        if not (felt or z > lid or h > lid):
+            scratch[C_MEASURE + j] = ZERO
+
+
+@fast_compiled
+def _far_end(scratch: Float32Array, j: int) -> f32:
+    return f32(scratch[C_D_LO + j] + scratch[C_D_SPAN + j] / (ONE - scratch[C_FALL + j]))
+
+
+@fast_compiled
+def sort(work: Work, n: int) -> None:
+    """Bring pairs of one rule together, each rule from a new vector register on."""
+    scratch, kind, place, begin = work.scratch, work.kind, work.place, work.begin
     begin[:] = 0
     for j in range(u64(n)):
-        wanted = min(int(np.ceil(scratch[WANTED + j])), MOST_NODES)
-        kind[j] = KIND_OF[max(wanted, 1)]
-        if lid < np.inf and _feels_lid(scratch, j, h, sz0, lid, curve):
-            kind[j] = KINDS + min(kind[j] + 2, KINDS - 1)
-        begin[kind[j] + 1] += 1
+        begin[u64(kind[j] + 1)] += 1
     for k in range(2 * KINDS):
-        begin[k + 1] += begin[k]
+        begin[k + 1] = begin[k] + whole(begin[k + 1])
     for j in range(u64(n)):
-        place = begin[kind[j]]
-        begin[kind[j]] += 1
-        sorted_[place] = live[j]
-        for field in range(FIELDS):
-            scratch[D_LO + u64(ROOM * field + place)] = scratch[C_D_LO + u64(ROOM * field) + j]
+        rule = u64(kind[j])
+        p = begin[rule]
+        begin[rule] = p + 1
+        place[j] = p
+        to = u64(p)
+        scratch[D_LO + to] = scratch[C_D_LO + j]
+        scratch[D_SPAN + to] = scratch[C_D_SPAN + j]
+        scratch[C_LO + to] = scratch[C_C_LO + j]
+        scratch[C_SPAN + to] = scratch[C_C_SPAN + j]
+        scratch[MEASURE + to] = scratch[C_MEASURE + j]
+        scratch[FALL + to] = scratch[C_FALL + j]
+        scratch[APART + to] = scratch[C_APART + j]
+        scratch[MIRROR + to] = scratch[C_MIRROR + j]
     for k in range(2 * KINDS, 0, -1):
-        begin[k] = begin[k - 1]
+        begin[k] = whole(begin[k - 1])
     begin[0] = 0
+    for j in range(u64(begin[2 * KINDS])):
+        scratch[SUM + j] = ZERO
 
 
 @fast_compiled
-def _lid_sum(z: f32, h: f32, variance: f32, lid: f32) -> f32:
-    """Plume, ground and lid, as images near the source, as waves far from it."""
-    if variance < f32(0.25) * lid * lid:
-        per = HALF / variance
-        apart, up = z - h, z + h
-        shift = TWO * lid
-        return f32(
-            np.exp(-per * apart * apart) + np.exp(-per * up * up)
-            + np.exp(-per * (apart - shift) ** 2) + np.exp(-per * (apart + shift) ** 2)
-            + np.exp(-per * (up - shift) ** 2) + np.exp(-per * (up + shift) ** 2)
-            + np.exp(-per * (up - shift - shift) ** 2)
-        )  # fmt: skip
-    total = HALF
-    for order in range(1, 4):
-        wave = f32(order) * PI / lid
-        total += np.exp(-HALF * wave * wave * variance) * np.cos(wave * z) * np.cos(wave * h)
-    return f32(TWO * total * np.sqrt(TWO * PI * variance) / lid)
+def sum_free(
+    scratch: Float32Array, first: int, last: int, kind: int, line: Line, curve: Curve
+) -> None:
+    """Add up one rule's nodes for the pairs in places ``first`` to ``last``; no lid is felt.
 
-
-@fast_compiled
-def sum_free(scratch: Float32Array, n: int, kind: int, sy0: f32, sz0: f32, curve: Curve) -> None:
-    """Add up one rule's nodes for its ``n`` pairs, the first in ``scratch``; no lid is felt."""
+    Variances are fractions, so that one division serves both and their root.
+    """
     a, b, e1, e2, az_squared, g = curve
-    a_squared, sy0_squared, sz0_squared = a * a, sy0 * sy0, sz0 * sz0
+    sy0_squared, sz0_squared = line.sy0 * line.sy0, line.sz0 * line.sz0
+    y0, y1, y2 = sy0_squared + TINY, sy0_squared * b, a * a
+    z1, z2, z3 = sz0_squared * e1, sz0_squared * e2 + az_squared, az_squared * g
     for node in range(RULE_SIZE[kind]):
         xi, weight = NODES[kind, node], WEIGHTS[kind, node]
-        for j in range(u64(n)):
-            keep = scratch[KEEP + j]
-            stretch = ONE / (ONE - (ONE - keep) * xi)
-            share = xi * keep * stretch
+        for j in range(u64(first), u64(last)):
+            grow = ONE / (ONE - scratch[FALL + j] * xi)
+            share = xi * grow
             d = scratch[D_LO + j] + scratch[D_SPAN + j] * share
             c = scratch[C_LO + j] + scratch[C_SPAN + j] * share
-            # variances as fractions, so that one division serves both and their root
             y_under = ONE + b * d
-            y_over = sy0_squared * y_under + a_squared * d * d + TINY
+            y_over = y0 + d * (y1 + d * y2)
             z_under = ONE + d * (e1 + e2 * d)
-            z_over = sz0_squared * z_under + az_squared * d * d * (ONE + g * d)
+            z_over = sz0_squared + d * (z1 + d * (z2 + d * z3))
             per_both = ONE / (y_over * z_over)
             per_y = y_under * z_over * per_both
             per_z = z_under * y_over * per_both
-            exponent = HALF * c * c * per_y + scratch[APART + j] * per_z
-            mirror = exponential(-scratch[MIRROR + j] * per_z)
-            plume = np.sqrt(per_y * per_z) * exponential(-exponent) * (ONE + mirror)
-            scratch[SUM + j] += weight * scratch[MEASURE + j] * stretch * stretch * plume
+            fall = c * c * per_y + scratch[APART + j] * per_z
+            mirror = power_of_two(-scratch[MIRROR + j] * per_z)
+            plume = np.sqrt(per_y * per_z) * power_of_two(-fall) * (ONE + mirror)
+            scratch[SUM + j] += weight * scratch[MEASURE + j] * grow * grow * plume
+
+
+@fast_compiled
+def _images(per_z: f32, z: f32, h: f32, lid: f32) -> f32:
+    """Plume, ground and lid near the source: images; ``per_z`` is 1/(2 ln 2 sigma_z^2)."""
+    apart, up, shift = z - h, z + h, TWO * lid
+    return (
+        power_of_two(-per_z * apart * apart) + power_of_two(-per_z * up * up)
+        + power_of_two(-per_z * (apart - shift) * (apart - shift))
+        + power_of_two(-per_z * (apart + shift) * (apart + shift))
+        + power_of_two(-per_z * (up - shift) * (up - shift))
+        + power_of_two(-per_z * (up + shift) * (up + shift))
+        + power_of_two(-per_z * (up - shift - shift) * (up - shift - shift))
+    )  # fmt: skip
 
 
 @fast_compiled
 def sum_under_lid(
-    scratch: Float32Array, owner: IntArray, points: FloatArray, sorted_: IntArray,
-    begin: int, end: int, kind: int, sy0: f32, sz0: f32, h: f32, lid: f32, curve: Curve,
-) -> None:  # fmt: skip
-    """Add up the nodes of pairs the lid touches, one at a time."""
+    scratch: Float32Array, first: int, last: int, kind: int, line: Line, lid: f32, curve: Curve
+) -> None:
+    """Add up the nodes of pairs the lid touches: images near the source, waves far from it."""
+    sy0, sz0, h = line.sy0, line.sz0, line.h
     a, b, e1, e2, az_squared, g = curve
-    for j in range(u64(begin), u64(end)):
-        z = f32(points[owner[sorted_[j]], 2])
-        keep = scratch[KEEP + j]
-        for node in range(RULE_SIZE[kind]):
-            xi, weight = NODES[kind, node], WEIGHTS[kind, node]
-            stretch = ONE / (ONE - (ONE - keep) * xi)
-            share = xi * keep * stretch
+    y0, y2 = sy0 * sy0 + TINY, a * a
+    far_from = f32(0.25) * lid * lid
+    wave = PI / lid
+    at_source = np.cos(wave * h)
+    twice_at_source = TWO * at_source * at_source - ONE
+    decay, spread = -HALF_PER_LN2 * wave * wave, np.sqrt(TWO * PI) / lid
+    for j in range(u64(first), u64(last)):
+        scratch[WAVE + j] = np.cos(wave * scratch[S_Z + j])
+    for node in range(RULE_SIZE[kind]):
+        xi, weight = NODES[kind, node], WEIGHTS[kind, node]
+        for j in range(u64(first), u64(last)):
+            grow = ONE / (ONE - scratch[FALL + j] * xi)
+            share = xi * grow
             d = scratch[D_LO + j] + scratch[D_SPAN + j] * share
             c = scratch[C_LO + j] + scratch[C_SPAN + j] * share
-            sy_squared = sy0 * sy0 + a * a * d * d / (ONE + b * d) + TINY
-            sz_squared = sz0 * sz0 + az_squared * d * d * (ONE + g * d) / (ONE + d * (e1 + e2 * d))
-            plume = np.exp(-HALF * c * c / sy_squared) / np.sqrt(sy_squared * sz_squared)
-            scratch[SUM + j] += (
-                weight * scratch[MEASURE + j] * stretch * stretch
-                * plume * _lid_sum(z, h, sz_squared, lid)
-            )  # fmt: skip
+            per_y = ONE / (y0 + y2 * d * d / (ONE + b * d))
+            variance = sz0 * sz0 + az_squared * d * d * (ONE + g * d) / (ONE + d * (e1 + e2 * d))
+            per_z = ONE / variance
+            near = _images(HALF_PER_LN2 * per_z, scratch[S_Z + j], h, lid)
+            at = scratch[WAVE + j]
+            once = power_of_two(decay * variance) * at * at_source
+            twice = power_of_two(TWO * TWO * decay * variance) * twice_at_source
+            total = HALF + once + twice * (TWO * at * at - ONE)
+            far = TWO * spread * np.sqrt(variance) * total
+            tall = near if variance < far_from else far
+            plume = np.sqrt(per_y * per_z) * power_of_two(-c * c * per_y) * tall
+            scratch[SUM + j] += weight * scratch[MEASURE + j] * grow * grow * plume

@@ -8,8 +8,9 @@ import numba
 import numpy as np
 import pytest
 
-from roaddisp.dispersion import compiling
+from roaddisp.dispersion import compiling, kernel
 from roaddisp.dispersion.kernel import needs_compiling, response_table, windowed_table
+from roaddisp.dispersion.lids import lid_is_felt
 from roaddisp.dispersion.reference import unit_concentration
 
 RANDOM = np.random.default_rng(7)
@@ -65,14 +66,48 @@ def test_order_of_receptors_does_not_matter():
     assert table(receptors=RECEPTORS[order]) == pytest.approx(table()[..., order], rel=2e-5)
 
 
-def test_same_bytes_whatever_the_number_of_threads():
-    many = numba.get_num_threads()
-    first = table()
-    try:
-        numba.set_num_threads(1)
-        assert table().tobytes() == first.tobytes()
-    finally:
-        numba.set_num_threads(many)
+@pytest.mark.parametrize("threads", [1, 2, 99])
+def test_same_bytes_whatever_the_number_of_threads(threads):
+    standing = numba.get_num_threads()
+    assert table(threads=threads).tobytes() == table().tobytes()
+    assert numba.get_num_threads() == standing
+
+
+def test_no_threads_are_refused():
+    with pytest.raises(ValueError, match="threads: 0; allowed: 1 and more"):
+        table(threads=0)
+
+
+@pytest.mark.parametrize(("pairs", "blocks"), [(1, 1), (1000, 1), (1000, 2), (10**9, 8)])
+def test_same_bytes_however_the_work_is_parted(pairs, blocks, monkeypatch):
+    expected = table().tobytes()
+    monkeypatch.setattr(kernel, "PAIRS_AT_ONCE", pairs)
+    monkeypatch.setattr(kernel, "BLOCKS_TOGETHER", blocks)
+    assert table().tobytes() == expected
+
+
+@pytest.mark.parametrize("states", [6, 216, 1862])
+@pytest.mark.parametrize("receptors", [10_000, 100_000])
+def test_a_call_is_short_enough_to_be_stopped_within_a_second(receptors, states):
+    """20 ns a pair and state is three times what a pair takes."""
+    parts = list(kernel._parts(receptors, 1024, 500, states))
+    longest = max((b1 - b0) * 1024 * (s1 - s0) * states for b0, b1, s0, s1 in parts)
+    assert longest * 20e-9 < 1.0
+    done = sum((b1 - b0) * (s1 - s0) for b0, b1, s0, s1 in parts)
+    assert done == -(-receptors // 1024) * 500
+
+
+def test_a_stopped_call_leaves_the_next_one_free(monkeypatch):
+    def stop(*_):
+        raise KeyboardInterrupt
+
+    expected, standing = table(), numba.get_num_threads()
+    with monkeypatch.context() as patch:
+        patch.setattr(kernel.stages, "fill_table", stop)
+        with pytest.raises(KeyboardInterrupt):
+            table(threads=1)
+    assert numba.get_num_threads() == standing
+    assert np.array_equal(table(), expected)
 
 
 def test_calls_from_several_threads_give_the_same():
@@ -144,6 +179,50 @@ def test_the_window_is_taken_from_the_piece():
     far_off = np.tile([[[9e4, 9e4], [9e4, 9.1e4]]], (9, 1, 1))
     assert not windowed(0.0, 5e4, piece=far_off).any()
     assert np.array_equal(windowed(5e4, np.inf, piece=far_off), table())
+
+
+LIDS = np.array([60.0, 8.0, np.inf, 130.0])
+
+
+@pytest.mark.parametrize("terrain", ["open", "urban"])
+def test_the_change_that_lids_make(terrain):
+    """Free sums and change make the table under lids; 8 m leaves a receptor above."""
+    free = windowed(0.0, np.inf, terrain=terrain)
+    change = windowed(0.0, np.inf, terrain=terrain, mixing_height=LIDS, touched_only=True)
+    under = windowed(0.0, np.inf, terrain=terrain, mixing_height=LIDS)
+    assert not change[2].any()
+    assert change[[0, 1, 3]].any(axis=(1, 2)).all()
+    gap = np.abs(free + change - under)
+    assert np.all(gap <= 2e-6 * (np.abs(free) + np.abs(under)))
+
+
+def test_pairs_that_feel_no_lid_change_by_nothing():
+    change = windowed(0.0, np.inf, mixing_height=np.full(4, 120.0), touched_only=True)
+    free, under = table(), table(mixing_height=120.0)
+    still = change == 0.0
+    assert np.array_equal(free[still], under[still])
+    assert 0.1 < still.mean() < 0.99
+
+
+def test_above_the_lid_the_change_takes_all_away():
+    low = {"mixing_height": np.full(4, 1.0), "touched_only": True}
+    assert np.array_equal(windowed(0.0, np.inf, **low), -table())
+
+
+@pytest.mark.parametrize("terrain", ["open", "urban"])
+def test_a_lid_said_not_to_be_felt_changes_nothing(terrain):
+    farthest = 2000.0  # no receptor and segment are farther apart
+    codes, lid = np.repeat(np.arange(6), 40), np.tile(np.geomspace(5.0, 5000.0, 40), 6)
+    felt = lid_is_felt(
+        codes, lid, terrain=terrain, sigma_z0=1.2, heights=1.3,
+        receptor_z=RECEPTORS[:, 2], farthest=farthest,
+    )  # fmt: skip
+    change = windowed(
+        0.0, np.inf, terrain=terrain, wind_from=np.full(240, 145.0), stability_codes=codes,
+        mixing_height=lid, touched_only=True,
+    ).any(axis=(1, 2))  # fmt: skip
+    assert not change[~felt].any()
+    assert change.sum() > 0.6 * felt.sum()
 
 
 def test_spread_across_the_segment_alone():

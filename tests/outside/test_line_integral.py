@@ -88,6 +88,7 @@ def test_response_table_agrees_with_quadrature():
             stability=[case["stability"]],
             strength=[1.0],
             group=[0],
+            threads=1,
             **source(case),
         )[0, 0, 0]
         expected = case["concentration"] * case["speed"]
