@@ -45,8 +45,13 @@ C_D_LO, C_D_SPAN, C_C_LO, C_C_SPAN, C_MEASURE, C_FALL, C_APART, C_MIRROR = (
 D_LO, D_SPAN, C_LO, C_SPAN, MEASURE, FALL, APART, MIRROR = (
     u64(ROOM * column) for column in range(18 + FIELDS, 18 + 2 * FIELDS)
 )
-SUM, S_Z, WAVE = (u64(ROOM * column) for column in range(18 + 2 * FIELDS, 21 + 2 * FIELDS))
-COLUMNS: Final = 21 + 2 * FIELDS
+SUM: Final = u64(ROOM * (18 + 2 * FIELDS))
+# ... and under a lid: height, cos(pi z / lid); at a node, plume without its vertical part,
+# vertical variance, vertical part
+S_Z, WAVE, PLUME, VARIANCE, TALL = (
+    u64(ROOM * column) for column in range(19 + 2 * FIELDS, 24 + 2 * FIELDS)
+)
+COLUMNS: Final = 24 + 2 * FIELDS
 
 RULES: Final = (1, 2, 3, 4, 5, 6, 8, 10, 13, 17, 24, 36)
 KINDS: Final = len(RULES)

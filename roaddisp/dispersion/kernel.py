@@ -278,7 +278,7 @@ def _threads(wanted: int | None) -> Iterator[None]:
 
 
 def needs_compiling() -> bool:
-    """Whether the next table waits for the compiler (some 15 s, once per installation)."""
+    """Whether the next table waits for the compiler (some 25 s, once per installation)."""
     return not is_kept(stages.fill_table)
 
 

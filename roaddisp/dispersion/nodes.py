@@ -52,6 +52,7 @@ from roaddisp.dispersion.columns import (
     P4,
     PER_LN2,
     PI,
+    PLUME,
     RISES,
     ROOT_HALF_PER_LN2,
     RULE_SIZE,
@@ -60,9 +61,11 @@ from roaddisp.dispersion.columns import (
     SLOPE_SHORT,
     STEEP_FROM,
     SUM,
+    TALL,
     TINY,
     TWO,
     ULP,
+    VARIANCE,
     WAVE,
     WEIGHTS,
     ZERO,
@@ -80,7 +83,7 @@ from roaddisp.model import Float32Array
 @fast_compiled
 def power_of_two(y: f32) -> f32:
     """2^y for y <= 0 in vector instructions, to 4e-6; nothing is lost below -120."""
-    y = max(LOWEST_POWER, y)
+    y = y if y > LOWEST_POWER else LOWEST_POWER
     shifted = y + MAGIC
     f = y - (shifted - MAGIC)
     series = (((P4 * f + P3) * f + P2) * f + P1) * f + P0
@@ -99,8 +102,8 @@ def logarithm(x: f32) -> f32:
 
 @fast_compiled
 def _capped(t: f32) -> f32:
-    low = max(-FARTHEST, t)
-    return min(FARTHEST, low)
+    low = t if t > -FARTHEST else -FARTHEST
+    return low if low < FARTHEST else FARTHEST
 
 
 @fast_compiled
@@ -135,7 +138,7 @@ def stretch(work: Work, n: int, line: Line, curve: Curve) -> None:
         apart = (z - h) * (z - h)
         length = hi - lo if hi > lo else ZERO
         d_lo = d + lo * d_rate
-        d_lo = max(ZERO, d_lo)
+        d_lo = d_lo if d_lo > ZERO else ZERO
         d_hi = d_lo + length * d_rate
         c_lo, c_hi = c + lo * c_rate, c + hi * c_rate
         delta = scale(c_lo, c_hi, sy0_squared, per_a, most_delta)
@@ -149,10 +152,10 @@ def stretch(work: Work, n: int, line: Line, curve: Curve) -> None:
         t_hi = _capped(c_hi / np.sqrt(sy0_squared + a_squared * d_hi * d_hi + TINY))
         path = abs(t_mid - t_lo) + abs(t_hi - t_mid)
         e_lo, e_mid, e_hi = HALF * t_lo * t_lo, HALF * t_mid * t_mid, HALF * t_hi * t_hi
-        e_most = max(e_hi, e_lo)
-        e_most = max(e_mid, e_most)
-        e_least = min(e_hi, e_lo)
-        e_least = min(e_mid, e_least)
+        e_most = e_lo if e_lo > e_hi else e_hi
+        e_most = e_most if e_most > e_mid else e_mid
+        e_least = e_lo if e_lo < e_hi else e_hi
+        e_least = e_least if e_least < e_mid else e_mid
         fall = e_most - e_least
         steep = fall - STEEP_FROM if fall > STEEP_FROM else ZERO
         sz_lo = sz0_squared + az_squared * d_lo * d_lo * (ONE + g * d_lo) / (
@@ -177,7 +180,7 @@ def stretch(work: Work, n: int, line: Line, curve: Curve) -> None:
         scratch[C_FALL + j] = ONE - keep
         scratch[C_APART + j] = HALF_PER_LN2 * apart
         scratch[C_MIRROR + j] = PER_LN2 * TWO * z * h
-        kind[j] = _rule(min(short, long))
+        kind[j] = _rule(long if long < short else short)
 
 
 @fast_compiled
@@ -274,50 +277,60 @@ def sum_free(
 
 
 @fast_compiled
-def _images(per_z: f32, z: f32, h: f32, lid: f32) -> f32:
-    """Plume, ground and lid near the source: images; ``per_z`` is 1/(2 ln 2 sigma_z^2)."""
-    apart, up, shift = z - h, z + h, TWO * lid
-    return (
-        power_of_two(-per_z * apart * apart) + power_of_two(-per_z * up * up)
-        + power_of_two(-per_z * (apart - shift) * (apart - shift))
-        + power_of_two(-per_z * (apart + shift) * (apart + shift))
-        + power_of_two(-per_z * (up - shift) * (up - shift))
-        + power_of_two(-per_z * (up + shift) * (up + shift))
-        + power_of_two(-per_z * (up - shift - shift) * (up - shift - shift))
-    )  # fmt: skip
+def sum_under_lid(
+    scratch: Float32Array, first: int, last: int, kind: int, line: Line, lid: f32, curve: Curve
+) -> None:  # fmt: skip
+    """Add up the nodes of pairs the lid touches: images near the source, waves far from it."""
+    for j in range(u64(first), u64(last)):
+        scratch[WAVE + j] = np.cos(PI / lid * scratch[S_Z + j])
+    for node in range(RULE_SIZE[kind]):
+        _at_node(scratch, first, last, NODES[kind, node], WEIGHTS[kind, node], line, curve)
+        for order in range(-1, 3):
+            _add_image(scratch, first, last, f32(2 * order) * lid - line.h)
+            if order < 2:
+                _add_image(scratch, first, last, f32(2 * order) * lid + line.h)
+        _add_waves(scratch, first, last, line.h, lid)
 
 
 @fast_compiled
-def sum_under_lid(
-    scratch: Float32Array, first: int, last: int, kind: int, line: Line, lid: f32, curve: Curve
+def _at_node(
+    scratch: Float32Array, first: int, last: int, xi: f32, weight: f32, line: Line, curve: Curve
 ) -> None:
-    """Add up the nodes of pairs the lid touches: images near the source, waves far from it."""
-    sy0, sz0, h = line.sy0, line.sz0, line.h
+    """Weighted plume without its vertical part, and vertical variance, at one node."""
     a, b, e1, e2, az_squared, g = curve
-    y0, y2 = sy0 * sy0 + TINY, a * a
-    far_from = f32(0.25) * lid * lid
-    wave = PI / lid
+    y0, sz0_squared = line.sy0 * line.sy0 + TINY, line.sz0 * line.sz0
+    for j in range(u64(first), u64(last)):
+        grow = ONE / (ONE - scratch[FALL + j] * xi)
+        share = xi * grow
+        d = scratch[D_LO + j] + scratch[D_SPAN + j] * share
+        c = scratch[C_LO + j] + scratch[C_SPAN + j] * share
+        per_y = ONE / (y0 + a * a * d * d / (ONE + b * d))
+        variance = sz0_squared + az_squared * d * d * (ONE + g * d) / (ONE + d * (e1 + e2 * d))
+        plume = np.sqrt(per_y / variance) * power_of_two(-c * c * per_y)
+        scratch[PLUME + j] = weight * scratch[MEASURE + j] * grow * grow * plume
+        scratch[VARIANCE + j] = variance
+        scratch[TALL + j] = ZERO
+
+
+@fast_compiled
+def _add_image(scratch: Float32Array, first: int, last: int, at: f32) -> None:
+    """Add the image of the source at height ``at``."""
+    for j in range(u64(first), u64(last)):
+        apart = scratch[S_Z + j] - at
+        scratch[TALL + j] += power_of_two(-HALF_PER_LN2 * apart * apart / scratch[VARIANCE + j])
+
+
+@fast_compiled
+def _add_waves(scratch: Float32Array, first: int, last: int, h: f32, lid: f32) -> None:
+    """Take waves instead of images where the plume fills half the air; add to the sum."""
+    wave, far_from = PI / lid, f32(0.25) * lid * lid
     at_source = np.cos(wave * h)
     twice_at_source = TWO * at_source * at_source - ONE
-    decay, spread = -HALF_PER_LN2 * wave * wave, np.sqrt(TWO * PI) / lid
+    decay, spread = -HALF_PER_LN2 * wave * wave, TWO * np.sqrt(TWO * PI) / lid
     for j in range(u64(first), u64(last)):
-        scratch[WAVE + j] = np.cos(wave * scratch[S_Z + j])
-    for node in range(RULE_SIZE[kind]):
-        xi, weight = NODES[kind, node], WEIGHTS[kind, node]
-        for j in range(u64(first), u64(last)):
-            grow = ONE / (ONE - scratch[FALL + j] * xi)
-            share = xi * grow
-            d = scratch[D_LO + j] + scratch[D_SPAN + j] * share
-            c = scratch[C_LO + j] + scratch[C_SPAN + j] * share
-            per_y = ONE / (y0 + y2 * d * d / (ONE + b * d))
-            variance = sz0 * sz0 + az_squared * d * d * (ONE + g * d) / (ONE + d * (e1 + e2 * d))
-            per_z = ONE / variance
-            near = _images(HALF_PER_LN2 * per_z, scratch[S_Z + j], h, lid)
-            at = scratch[WAVE + j]
-            once = power_of_two(decay * variance) * at * at_source
-            twice = power_of_two(TWO * TWO * decay * variance) * twice_at_source
-            total = HALF + once + twice * (TWO * at * at - ONE)
-            far = TWO * spread * np.sqrt(variance) * total
-            tall = near if variance < far_from else far
-            plume = np.sqrt(per_y * per_z) * power_of_two(-c * c * per_y) * tall
-            scratch[SUM + j] += weight * scratch[MEASURE + j] * grow * grow * plume
+        variance, at = scratch[VARIANCE + j], scratch[WAVE + j]
+        damped = power_of_two(decay * variance)
+        twice = damped * damped * damped * damped * twice_at_source * (TWO * at * at - ONE)
+        far = spread * np.sqrt(variance) * (HALF + damped * at * at_source + twice)
+        near = scratch[TALL + j]
+        scratch[SUM + j] += scratch[PLUME + j] * (near if variance < far_from else far)

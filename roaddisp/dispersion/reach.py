@@ -113,7 +113,7 @@ def aim(work: Work, n: int, down_x: f32, down_y: f32, flip: f32, line: Line, a: 
     """
     scratch, flag, live = work.scratch, work.flag, work.live
     d_rate, c_rate, sy0 = line.d_rate, line.c_rate, line.sy0
-    steepness = max(TINY, d_rate)
+    steepness = d_rate if d_rate > TINY else TINY
     for j in range(u64(whole(n))):
         gx, gy = scratch[GAP_X + j], scratch[GAP_Y + j]
         d = gx * down_x + gy * down_y
@@ -122,7 +122,7 @@ def aim(work: Work, n: int, down_x: f32, down_y: f32, flip: f32, line: Line, a: 
         lo = start if flip > ZERO else -end
         hi = end if flip > ZERO else -start
         onset = -d / steepness
-        lo = max(onset, lo)
+        lo = lo if lo > onset else onset
         reached = _in_plume(d, c, lo, hi, d_rate, c_rate, sy0, a)
         flag[j] = np.int32(reached & (lo < hi) & (d + hi * d_rate > ZERO))
         scratch[DOWN + j], scratch[CROSS + j] = d, c
@@ -145,7 +145,7 @@ def aim(work: Work, n: int, down_x: f32, down_y: f32, flip: f32, line: Line, a: 
 def _in_plume(d: f32, c: f32, lo: f32, hi: f32, d_rate: f32, c_rate: f32, sy0: f32, a: f32) -> bool:
     """Whether the line is not wholly on one side of the cone |c| = 6.3 (sy0 + a d)."""
     d_lo, d_hi = d + lo * d_rate, d + hi * d_rate
-    d_lo = max(ZERO, d_lo)
+    d_lo = d_lo if d_lo > ZERO else ZERO
     c_lo, c_hi = c + lo * c_rate, c + hi * c_rate
     reach_lo, reach_hi = PRUNE * (sy0 + a * d_lo), PRUNE * (sy0 + a * d_hi)
     left = (c_lo > reach_lo) & (c_hi > reach_hi)
@@ -227,14 +227,14 @@ def cut(scratch: Float32Array, n: int, line: Line, a: f32) -> None:
         crosses = c_lo * c_hi <= ZERO
         change = c_lo - c_hi
         change = change if change != ZERO else ONE
-        t_end = min(t_hi, t_lo)
+        t_end = t_lo if t_lo < t_hi else t_hi
         end = lo if t_lo < t_hi else hi
         least = ZERO if crosses else t_end
         middle = lo + (hi - lo) * c_lo / change if crosses else end
         wide = least + CUT + apart * apart * per_sz0_squared
         most = least + CUT_LEAST_MORE
-        most = max(CUT_MOST, most)
-        wide = min(most, wide)
+        most = most if most > CUT_MOST else CUT_MOST
+        wide = wide if wide < most else most
 
         c_mid = ZERO if crosses else c + middle * c_rate
         d_mid = d + middle * d_rate
@@ -244,14 +244,14 @@ def cut(scratch: Float32Array, n: int, line: Line, a: f32) -> None:
         # one^2 - two none, without its cancellation
         offset = c * d_rate - d * c_rate
         inside = wide * (a_squared * offset * offset + sy0_squared * two)
-        root = np.sqrt(max(ZERO, inside))
+        root = np.sqrt(inside if inside > ZERO else ZERO)
         summed = -(one + root) if one >= ZERO else root - one
         summed = summed if summed != ZERO else TINY
         divisor = two if two != ZERO else TINY
         far, near = middle + summed / divisor, middle + none / summed
         # two > 0: the line leaves the plume on both sides of its middle
-        closed_lo = min(far, near)
-        closed_hi = max(near, far)
+        closed_lo = near if near < far else far
+        closed_hi = far if far > near else near
         # two < 0: it leaves once and comes back; cut only an end that lies outside
         open_lo = near if (near <= middle) & (far < lo) else lo
         open_hi = near if (near > middle) & (far > hi) else hi
@@ -273,7 +273,7 @@ def lift(scratch: Float32Array, n: int, line: Line, curve: Curve) -> None:
     a, _, e1, e2, az_squared, g = curve
     a_squared, sy0_squared, sz0_squared = a * a, sy0 * sy0, sz0 * sz0
     per_az_squared = ONE / az_squared
-    steepness = max(TINY, d_rate)
+    steepness = d_rate if d_rate > TINY else TINY
     for j in range(u64(whole(n))):
         d, c = scratch[L_DOWN + j], scratch[L_CROSS + j]
         cut_lo, cut_hi = scratch[IN_FIRST + j], scratch[IN_LAST + j]
@@ -290,9 +290,9 @@ def lift(scratch: Float32Array, n: int, line: Line, curve: Curve) -> None:
         t_last = c_end * c_end / (sy0_squared + a_squared * d_end * d_end + TINY)
         at_mid = apart * apart / sz_mid
         at_end = apart * apart / sz_end + t_last - least
-        best = min(at_end, at_mid)
+        best = at_mid if at_mid < at_end else at_end
         lifted = apart * apart / (best + NOTHING) - sz0_squared
-        lifted = max(ZERO, lifted)
+        lifted = lifted if lifted > ZERO else ZERO
         d_lift = np.sqrt(lifted * per_az_squared)
         d_lift = d_lift / np.sqrt(ONE + g * d_lift)
         lift_lo = (d_lift - d) / steepness
@@ -312,7 +312,7 @@ def spans(work: Work, n: int, line: Line, curve: Curve) -> int:
         lo, hi = scratch[IN_FIRST + j], scratch[IN_LAST + j]
         span = SPAN_LIFTED if abs(scratch[L_Z + j] - h) > lifted else SPAN
         d_lo, d_hi = d + lo * d_rate, d + hi * d_rate
-        d_lo = max(ZERO, d_lo)
+        d_lo = d_lo if d_lo > ZERO else ZERO
         delta = scale(c + lo * c_rate, c + hi * c_rate, sy0_squared, per_a, rise)
         flag[j] = np.int32(d_hi + delta > span * (d_lo + delta))
     count = 0
@@ -325,11 +325,11 @@ def spans(work: Work, n: int, line: Line, curve: Curve) -> int:
 def scale(c_lo: f32, c_hi: f32, sy0_squared: f32, per_a: f32, most: f32) -> f32:
     """Find delta, the distance at which the plume's growth begins to count."""
     side_lo, side_hi = abs(c_lo), abs(c_hi)
-    c_least = min(side_hi, side_lo)
+    c_least = side_lo if side_lo < side_hi else side_hi
     c_least = ZERO if c_lo * c_hi <= ZERO else c_least
     delta = np.sqrt(sy0_squared + c_least * c_least) * per_a
-    delta = min(most, delta)
-    return max(LEAST_DELTA, delta)
+    delta = delta if delta < most else most
+    return delta if delta > LEAST_DELTA else LEAST_DELTA
 
 
 @fast_compiled

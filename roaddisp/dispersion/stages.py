@@ -189,6 +189,71 @@ def _one_state(
             _add(rows[k], work, n, strength[k] * per)
 
 
+@fast_compiled
+def _fill_block(
+    table: Float32Array, points: FloatArray, first: int, last: int,
+    first_segment: int, last_segment: int, ends: FloatArray, piece: FloatArray,
+    near: FloatArray, far: FloatArray, states: IntArray, turns: IntArray,
+    wind_from: FloatArray, code: IntArray, lid: FloatArray, curves: Float32Array,
+    strength: Float32Array, group: IntArray, height: FloatArray, sigma_z0: FloatArray,
+    sigma_y0: FloatArray, across_only: bool, touched_only: bool,
+) -> None:  # fmt: skip
+    """Add some segments to one block of receptors."""
+    work = room()
+    circle = _block_circle(points, first, last)
+    for s in range(first_segment, last_segment):
+        x0, y0, x1, y1 = ends[s, 0, 0], ends[s, 0, 1], ends[s, 1, 0], ends[s, 1, 1]
+        length = np.hypot(x1 - x0, y1 - y0)
+        if length == 0.0 or _outside_window(circle, piece[s], near[s], far[s]):
+            continue
+        pairs = gather(work, points, first, last, ends[s], piece[s], near[s], far[s])
+        if pairs == 0:
+            continue
+        along_x, along_y = (x1 - x0) / length, (y1 - y0) / length
+        sz0, h = f32(sigma_z0[s]), f32(height[s])
+        most_apart = f32(max(abs(circle[3] - height[s]), abs(circle[4] - height[s])))
+        for turn in range(len(turns) - 1):
+            w = states[turns[turn]]
+            down_x, down_y = -np.sin(wind_from[w]), -np.cos(wind_from[w])
+            d_rate = -(along_x * down_x + along_y * down_y)
+            c_rate = -(along_y * down_x - along_x * down_y)
+            spread = sigma_y0[s] * (abs(d_rate) if across_only else 1.0)
+            a = curves[code[w], 0]
+            if _block_misses(circle, x0, y0, x1, y1, down_x, down_y, spread, a):
+                continue
+            if touched_only and not _block_feels_lid(
+                circle,
+                x0,
+                y0,
+                x1,
+                y1,
+                down_x,
+                down_y,
+                sz0,
+                h,
+                f32(lid[w]),
+                _curve(curves[code[w]]),
+            ):
+                continue
+            flip = 1.0 if d_rate >= 0.0 else -1.0
+            line = Line(f32(flip * d_rate), f32(flip * c_rate), f32(spread), sz0, h)
+            m = aim(work, pairs, f32(down_x), f32(down_y), f32(flip), line, a)
+            if touched_only:
+                m = touched(work, m, line, f32(lid[w]), _curve(curves[code[w]]))
+            for index in range(turns[turn], turns[turn + 1]):
+                w = states[index]
+                if curves[code[w], 0] < a:
+                    a = curves[code[w], 0]
+                    m = narrow(work, m, line, a)
+                if m == 0:
+                    break
+                if touched_only or height[s] <= lid[w]:
+                    _one_state(
+                        table[w, :, group[s]], work, m, most_apart, line, f32(lid[w]),
+                        _curve(curves[code[w]]), strength[:, s], touched_only,
+                    )  # fmt: skip
+
+
 @parallel_compiled
 def fill_table(
     table: Float32Array, points: FloatArray, size: int, first_block: int, last_block: int,
@@ -211,56 +276,8 @@ def fill_table(
     """
     for number in prange(first_block, last_block):
         first, last = number * size, min(number * size + size, len(points))
-        work = room()
-        circle = _block_circle(points, first, last)
-        for s in range(first_segment, last_segment):
-            x0, y0, x1, y1 = ends[s, 0, 0], ends[s, 0, 1], ends[s, 1, 0], ends[s, 1, 1]
-            length = np.hypot(x1 - x0, y1 - y0)
-            if length == 0.0 or _outside_window(circle, piece[s], near[s], far[s]):
-                continue
-            pairs = gather(work, points, first, last, ends[s], piece[s], near[s], far[s])
-            if pairs == 0:
-                continue
-            along_x, along_y = (x1 - x0) / length, (y1 - y0) / length
-            sz0, h = f32(sigma_z0[s]), f32(height[s])
-            most_apart = f32(max(abs(circle[3] - height[s]), abs(circle[4] - height[s])))
-            for turn in range(len(turns) - 1):
-                w = states[turns[turn]]
-                down_x, down_y = -np.sin(wind_from[w]), -np.cos(wind_from[w])
-                d_rate = -(along_x * down_x + along_y * down_y)
-                c_rate = -(along_y * down_x - along_x * down_y)
-                spread = sigma_y0[s] * (abs(d_rate) if across_only else 1.0)
-                a = curves[code[w], 0]
-                if _block_misses(circle, x0, y0, x1, y1, down_x, down_y, spread, a):
-                    continue
-                if touched_only and not _block_feels_lid(
-                    circle,
-                    x0,
-                    y0,
-                    x1,
-                    y1,
-                    down_x,
-                    down_y,
-                    sz0,
-                    h,
-                    f32(lid[w]),
-                    _curve(curves[code[w]]),
-                ):
-                    continue
-                flip = 1.0 if d_rate >= 0.0 else -1.0
-                line = Line(f32(flip * d_rate), f32(flip * c_rate), f32(spread), sz0, h)
-                m = aim(work, pairs, f32(down_x), f32(down_y), f32(flip), line, a)
-                if touched_only:
-                    m = touched(work, m, line, f32(lid[w]), _curve(curves[code[w]]))
-                for index in range(turns[turn], turns[turn + 1]):
-                    w = states[index]
-                    if curves[code[w], 0] < a:
-                        a = curves[code[w], 0]
-                        m = narrow(work, m, line, a)
-                    if m == 0:
-                        break
-                    if touched_only or height[s] <= lid[w]:
-                        _one_state(
-                            table[w, :, group[s]], work, m, most_apart, line, f32(lid[w]),
-                            _curve(curves[code[w]]), strength[:, s], touched_only,
-                        )  # fmt: skip
+        _fill_block(
+            table, points, first, last, first_segment, last_segment, ends, piece, near, far,
+            states, turns, wind_from, code, lid, curves, strength, group, height, sigma_z0,
+            sigma_y0, across_only, touched_only,
+        )  # fmt: skip

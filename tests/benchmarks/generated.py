@@ -316,11 +316,13 @@ def main() -> None:
     parser.add_argument("folder", type=Path)
     parser.add_argument("--receptors", type=int, default=10_000, help="points of 'lines'")
     parser.add_argument("--step", type=int, default=10, help="degrees of wind of 'lines'")
+    parser.add_argument("--points", type=int, default=400, help="beside the roads of 'network'")
+    parser.add_argument("--spacing", type=int, default=50, help="metres of the grid of 'network'")
     asked = parser.parse_args()
     if asked.study == "lines":
         write_lines(asked.folder, receptors=asked.receptors, step=asked.step)
     else:
-        write_network(asked.folder)
+        write_network(asked.folder, points=asked.points, spacing=asked.spacing)
 
 
 if __name__ == "__main__":
