@@ -60,7 +60,7 @@ def command(
 
     read = read_study(study)
     if needs_compiling():
-        typer.echo("Compiling the inner loops, once after installation: about half a minute.", err=True)
+        typer.echo("Compiling the inner loops, once after installation: half a minute.", err=True)
     with _progress_bar() as progress:
         kept = None if responses is None else _kept(responses, read, scenario, threads)
         result = run(read, scenario=scenario, progress=progress, responses=kept, threads=threads)

@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterator, Sequence
-from contextlib import contextmanager
 from typing import Final
 
 import numba
@@ -13,7 +12,7 @@ import numpy.typing as npt
 
 from roaddisp.dispersion import arguments, stages
 from roaddisp.dispersion.columns import BLOCK
-from roaddisp.dispersion.compiling import ONE_AT_A_TIME, is_kept
+from roaddisp.dispersion.compiling import ONE_AT_A_TIME, is_kept, using_threads
 from roaddisp.dispersion.curves import coefficients
 from roaddisp.model import Float32Array, FloatArray, IntArray, Terrain
 
@@ -206,8 +205,6 @@ def windowed_table(
     ... )[0, 0, 0].round(2).tolist()
     [0.0, 0.3100000023841858]
     """
-    if threads is not None and threads < 1:
-        raise ValueError(f"threads: {threads}; allowed: 1 and more, or None for all")
     _within("stability_codes", stability_codes, 6)
     _within("group", group, n_groups)
     table = np.zeros((len(wind_from), len(strength), n_groups, len(receptors)), dtype=np.float32)
@@ -230,7 +227,7 @@ def windowed_table(
     group = np.array(group, dtype=np.int64)
     height, sigma_z0, sigma_y0 = _copy(height), _copy(sigma_z0), _copy(sigma_y0)
     for part in _parts(len(receptors), size, len(ends), len(states)):
-        with ONE_AT_A_TIME, _threads(threads), numba.parallel_chunksize(1):
+        with ONE_AT_A_TIME, using_threads(threads), numba.parallel_chunksize(1):
             stages.fill_table(
                 table, points, size, *part, ends, piece, near, far, states, turns, directions,
                 codes, lid, curves, amount, group, height, sigma_z0, sigma_y0,
@@ -263,18 +260,6 @@ def _by_direction(wind_from: FloatArray, widths: Float32Array) -> tuple[IntArray
     states = np.lexsort((-widths, wind_from)).astype(np.int64)
     turns = np.flatnonzero(np.diff(wind_from[states], prepend=np.nan) != 0.0)
     return states, np.append(turns, len(states)).astype(np.int64)
-
-
-@contextmanager
-def _threads(wanted: int | None) -> Iterator[None]:
-    """Set the number of threads for one call, under the lock, and put back what was."""
-    standing, settings = numba.get_num_threads(), vars(numba.config)
-    if wanted is not None:
-        numba.set_num_threads(min(wanted, int(settings["NUMBA_NUM_THREADS"])))
-    try:
-        yield
-    finally:
-        numba.set_num_threads(standing)
 
 
 def needs_compiling() -> bool:
