@@ -27,8 +27,12 @@ from roaddisp.model import (
 TABLE_BYTES = 256 * 2**20
 """Largest response table held at once [bytes]."""
 
-LARGEST_BLOCK = 8192
-"""Receptors of a table at most: enough for every thread to have work."""
+LARGEST_BLOCK = 16384
+"""Receptors of a table at most; the more there are, the denser they lie in the loops."""
+
+SHORT_RUN = 256
+"""So few receptors between two whose calm hours are run go with them: a block of their own
+would cost more."""
 
 
 def responses(
@@ -63,7 +67,7 @@ def responses(
     Responses
         Blocks in the order of the receptors.
     """
-    for block, own in _blocks(states, strengths, _every(receptors, calms_at)):
+    for block, own in _blocks(states, strengths, _with_calms(states, receptors, calms_at)):
         points = receptors.xyz[block]
 
         felt = np.flatnonzero(_felt(segments, strengths, points, own.lids, terrain))
@@ -143,8 +147,18 @@ def _chosen(lids: LidStates, rows: IntArray) -> LidStates:
     )
 
 
-def _every(receptors: Receptors, calms_at: BoolArray | None) -> BoolArray:
-    return np.ones(len(receptors), dtype=np.bool_) if calms_at is None else calms_at
+def _with_calms(
+    states: WeatherStates, receptors: Receptors, calms_at: BoolArray | None
+) -> BoolArray:
+    """Receptors whose block holds the states of calm hours, in runs long enough to be blocks."""
+    if calms_at is None or not states.calm_hours.size:
+        return np.full(len(receptors), calms_at is None, dtype=np.bool_)
+    wanted = np.flatnonzero(calms_at)
+    filled = calms_at.copy()
+    for first, last in pairwise(wanted.tolist()):
+        if last - first <= SHORT_RUN:
+            filled[first:last] = True
+    return filled
 
 
 def _blocks(
@@ -160,6 +174,7 @@ def _blocks(
         own = states if calms_at[first] else ordinary
         rows = len(own) + len(own.lids.wind_from)
         row_bytes = 4 * max(rows, 1) * tracers * groups
-        size = int(np.clip(TABLE_BYTES // row_bytes, 1, LARGEST_BLOCK))
+        most = int(np.clip(TABLE_BYTES // row_bytes, 1, LARGEST_BLOCK))
+        size = -(-(stop - first) // -(-(stop - first) // most))  # as even as can be
         for start in range(first, stop, size):
             yield slice(start, min(start + size, stop)), own
