@@ -57,18 +57,10 @@ def read_air(
     lines_up(view, instants.utc, int(minutes_of(clock)[0]))
     if not (view.complete and view.clean):
         return None
-    hour = places_on(clock, instants.utc)
-    of_run = hour >= 0
-    if not of_run.any():
-        view.error(
-            "no row lies in the hours of the weather",
-            "time",
-            0,
-            value=view.words("time")[0],
-            allowed=f"{clock.standard[0]} to {clock.standard[-1]} local standard time",
-            mend="bring air and weather of the same time",
-        )
+    hour = places_on(clock, instants.utc, view, "air")
+    if hour is None:
         return None
+    of_run = hour >= 0
     laid: dict[str, FloatArray] = {}
     for gas, values in gases.items():
         _clip(view, gas, values)

@@ -146,11 +146,24 @@ def axis_of(
     return clock, ((utc - utc[0]) // 60).astype(np.int64)
 
 
-def places_on(clock: Clock, utc: IntArray) -> IntArray:
-    """Find the hour of each time on the run's axis, -1 where it is not of the run."""
+def places_on(clock: Clock, utc: IntArray, view: TableView, what: str) -> IntArray | None:
+    """Find the hour of each time on the run's axis, -1 where it is not of the run.
+
+    A table without a row of the run is an error, and None.
+    """
     minutes = minutes_of(clock)
     hour = (utc - minutes[0]) // 60
     outside = (utc == NO_TIME) | (hour < 0) | (hour >= minutes.size)
+    if outside.all():
+        view.error(
+            "no row lies in the hours of the weather",
+            "time",
+            0,
+            value=view.words("time")[0],
+            allowed=f"{clock.standard[0]} to {clock.standard[-1]} local standard time",
+            mend=f"bring {what} and weather of the same time",
+        )
+        return None
     return np.where(outside, -1, hour).astype(np.int64)
 
 

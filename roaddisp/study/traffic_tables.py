@@ -199,18 +199,10 @@ def read_counts(
         return None
     place = {link: number for number, link in enumerate(links)}
     link = np.array([place[name] for name in names], dtype=np.int64)
-    hour = places_on(clock, instants.utc)
-    of_run = hour >= 0
-    if not of_run.any():
-        view.error(
-            "no row lies in the hours of the weather",
-            "time",
-            0,
-            value=view.words("time")[0],
-            allowed=f"{clock.standard[0]} to {clock.standard[-1]} local standard time",
-            mend="bring counts and weather of the same time",
-        )
+    hour = places_on(clock, instants.utc, view, "counts")
+    if hour is None:
         return None
+    of_run = hour >= 0
     number = {each: n for n, each in enumerate(classes)}
     which = np.array([number.get(each, 0) for each in classes_at], dtype=np.int64)
     table = np.full((len(links), max(len(classes), 1), clock.standard.size), np.nan)
